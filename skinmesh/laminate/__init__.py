@@ -1,0 +1,1 @@
+"""Materials, plies and stacks, and what classical lamination theory says of them."""

@@ -1,0 +1,1 @@
+"""From the developed skin to the finished shell mesh."""

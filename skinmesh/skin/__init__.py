@@ -1,0 +1,1 @@
+"""The developed skin: rows, seams, regions and the cover of plies."""

@@ -1,0 +1,1 @@
+"""The surface of the blade: profiles, unit shapes, and the loft through them."""

@@ -1,0 +1,1 @@
+"""Files from a finished shell mesh. Writers know nothing of geometry."""

@@ -1,0 +1,38 @@
+"""The register of file formats. A format is one module of ``skinmesh.write.formats`` that registers itself."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+from skinmesh.mesh.shellmesh import ShellMesh
+
+Writer = Callable[[ShellMesh, Path], None]
+
+
+@dataclass(frozen=True)
+class Format:
+    """One file format.
+
+    Attributes
+    ----------
+    name : str
+        What the user types after ``--formats``; also the file's suffix.
+    summary : str
+        A few words for the help.
+    write : callable
+        ``write(mesh, path)``; leaves the mesh as it was.
+    """
+
+    name: str
+    summary: str
+    write: Writer
+
+
+FORMATS: dict[str, Format] = {}
+
+
+def register_format(name: str, *, summary: str, write: Writer) -> None:
+    """Enter a format into the register."""
+    FORMATS[name] = Format(name, summary, write)
