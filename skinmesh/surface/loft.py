@@ -1,0 +1,220 @@
+"""The blade's surface: unit shapes lofted along the span, evaluated at any number of scattered points."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy.interpolate import PchipInterpolator
+
+from skinmesh.definition.blade import COUNTER_CLOCKWISE, BladeDefinition
+from skinmesh.frozen import freeze_array
+from skinmesh.surface.stations import StationShapes, shape_stations
+
+Complex = NDArray[np.complex128]
+Floats = NDArray[np.float64]
+
+CHUNK = 65536  # points evaluated at once, so that the gathered coefficients stay in the cache
+
+
+@dataclass(frozen=True, eq=False)
+class Surface:
+    """The mould surface r(z, t): t ∈ [−1, 0] pressure side, [0, 1] suction side, the leading edge at 0.
+
+    Attributes
+    ----------
+    z_ends : (2,) float array, m
+        Root and tip.
+    stations : (k,) float array, m
+        z of the table's stations.
+    shape_z : (j,) float array, m
+        z of the stations that define a shape.
+    knots : (2,) tuple of (n,) float array
+        Knots in |t| of the pressure and of the suction side.
+    pieces : (2,) tuple of (j − 1, n − 1, 4, 4) complex array
+        Power coefficients of the unit shape: interval along z, interval along |t|, power of z, power of |t|.
+    planform : PchipInterpolator
+        Chord, twist, pitch axis, prebend, sweep, origin and scale (complex, two columns each) along z.
+    is_mirrored : bool
+        Counter-clockwise blade.
+
+    Notes
+    -----
+    Fritsch, Carlson: Monotone piecewise cubic interpolation, SIAM J. Numer. Anal. 17 (1980): the interpolation along
+    the span; equal neighbours stay equal and nothing overshoots.
+    """
+
+    z_ends: Floats
+    stations: Floats
+    shape_z: Floats
+    knots: tuple[Floats, Floats]
+    pieces: tuple[Complex, Complex]
+    planform: PchipInterpolator
+    is_mirrored: bool
+
+    def __post_init__(self) -> None:
+        freeze_array(self, "z_ends", shape=(2,))
+        freeze_array(self, "stations", shape=(None,))
+        freeze_array(self, "shape_z", shape=(None,))
+
+    def chord(self, z: ArrayLike) -> Floats:
+        """Chord at z, m, of the shape of z."""
+        return np.asarray(self.planform(z)[..., 0])
+
+    def twist(self, z: ArrayLike) -> Floats:
+        """Twist at z, rad, of the shape of z."""
+        return np.asarray(self.planform(z)[..., 1])
+
+    def pitch_axis(self, z: ArrayLike) -> Floats:
+        """Fraction of the chord at which the pitch axis pierces the chord line, of the shape of z."""
+        return np.asarray(self.planform(z)[..., 2])
+
+    def section(self, z: ArrayLike, t: ArrayLike) -> Complex:
+        """Position in the untwisted section: metres towards the trailing edge + i · metres towards the suction side.
+
+        Parameters
+        ----------
+        z, t : float arrays that broadcast against each other
+            m; share of the side's arc length.
+
+        Returns
+        -------
+        complex array, m
+            Measured from the pitch axis.
+        """
+        return self._evaluate(z, t, derivatives=False)[0]
+
+    def section_rates(self, z: ArrayLike, t: ArrayLike) -> tuple[Complex, Complex, Complex]:
+        """Position in the untwisted section with its derivatives by t and by z.
+
+        Parameters
+        ----------
+        z, t : float arrays that broadcast against each other
+
+        Returns
+        -------
+        three complex arrays
+            m, m, and without unit.
+        """
+        place, by_t, by_z = self._evaluate(z, t, derivatives=True)
+        return place, by_t, by_z
+
+    def points(self, z: ArrayLike, t: ArrayLike) -> Floats:
+        """Points of the surface.
+
+        Parameters
+        ----------
+        z, t : float arrays that broadcast against each other
+
+        Returns
+        -------
+        (..., 3) float array, m
+        """
+        place = self.section(z, t)
+        z = np.broadcast_to(np.asarray(z, dtype=float), place.shape)
+        _, twist, _, prebend, sweep = np.moveaxis(self.planform(z)[..., :5], -1, 0)
+        return self._in_space(sweep + 1j * prebend + place * np.exp(1j * twist), z)
+
+    def tangents(self, z: ArrayLike, t: ArrayLike) -> tuple[Floats, Floats]:
+        """Derivatives of the points by t and by z.
+
+        Parameters
+        ----------
+        z, t : float arrays that broadcast against each other
+
+        Returns
+        -------
+        (..., 3) float array, m
+            dr/dt.
+        (..., 3) float array
+            dr/dz.
+        """
+        place, by_t, by_z = self.section_rates(z, t)
+        z = np.broadcast_to(np.asarray(z, dtype=float), place.shape)
+        twist = self.planform(z)[..., 1]
+        rate = np.moveaxis(self.planform(z, 1)[..., :5], -1, 0)
+        turn = np.exp(1j * twist)
+        along = rate[4] + 1j * rate[3] + (by_z + 1j * rate[1] * place) * turn
+        return self._in_space(by_t * turn, np.zeros_like(z)), self._in_space(along, np.ones_like(z))
+
+    def _in_space(self, plane: Complex, z: Floats) -> Floats:
+        y = -plane.real if self.is_mirrored else plane.real
+        return np.stack([plane.imag, y, z], axis=-1)
+
+    def _evaluate(self, z: ArrayLike, t: ArrayLike, *, derivatives: bool) -> tuple[Complex, ...]:
+        z_all, t_all = np.broadcast_arrays(np.asarray(z, dtype=float), np.asarray(t, dtype=float))
+        shape = z_all.shape
+        z_flat, t_flat = z_all.ravel(), t_all.ravel()
+        results = [np.empty(z_flat.size, dtype=complex) for _ in range(3 if derivatives else 1)]
+        for start in range(0, z_flat.size, CHUNK):
+            part = slice(start, start + CHUNK)
+            for whole, piece in zip(results, self._evaluate_chunk(z_flat[part], t_flat[part], derivatives), strict=True):
+                whole[part] = piece
+        return tuple(result.reshape(shape) for result in results)
+
+    def _evaluate_chunk(self, z: Floats, t: Floats, derivatives: bool) -> tuple[Complex, ...]:
+        along = np.clip(np.searchsorted(self.shape_z, z, side="right") - 1, 0, len(self.shape_z) - 2)
+        dz = z - self.shape_z[along]
+        shape, by_t, by_z = (np.empty(len(z), dtype=complex) for _ in range(3))
+        for side, sign in enumerate((-1.0, 1.0)):
+            own = np.flatnonzero(t < 0.0 if side == 0 else t >= 0.0)
+            knots = self.knots[side]
+            tau = np.abs(t[own])
+            i = np.clip(np.searchsorted(knots, tau, side="right") - 1, 0, len(knots) - 2)
+            h, w, k = (tau - knots[i])[:, None], dz[own], self.pieces[side][along[own], i]
+            in_z = k[..., 0] + h * (k[..., 1] + h * (k[..., 2] + h * k[..., 3]))
+            shape[own] = in_z[:, 0] + w * (in_z[:, 1] + w * (in_z[:, 2] + w * in_z[:, 3]))
+            if derivatives:
+                by_z[own] = in_z[:, 1] + w * (2.0 * in_z[:, 2] + w * 3.0 * in_z[:, 3])
+                rate = k[..., 1] + h * (2.0 * k[..., 2] + h * 3.0 * k[..., 3])
+                by_t[own] = sign * (rate[:, 0] + w * (rate[:, 1] + w * (rate[:, 2] + w * rate[:, 3])))
+        values = self.planform(z)
+        chord, pitch = values[:, 0], values[:, 2]
+        origin, scale = values[:, 5] + 1j * values[:, 6], values[:, 7] + 1j * values[:, 8]
+        unit = origin + scale * shape - pitch
+        if not derivatives:
+            return (chord * unit,)
+        rates = self.planform(z, 1)
+        origin_rate, scale_rate = rates[:, 5] + 1j * rates[:, 6], rates[:, 7] + 1j * rates[:, 8]
+        unit_rate = origin_rate + scale_rate * shape + scale * by_z - rates[:, 2]
+        return chord * unit, chord * scale * by_t, rates[:, 0] * unit + chord * unit_rate
+
+
+def loft_surface(blade: BladeDefinition) -> Surface:
+    """Loft the blade's sections along the span.
+
+    Control points of the unit shapes, chord, twist, pitch axis, prebend and sweep are interpolated along z on their
+    own and put together afterwards: to interpolate points in space would shrink twisted sections.
+
+    Parameters
+    ----------
+    blade : BladeDefinition
+
+    Returns
+    -------
+    Surface
+    """
+    table = blade.stations
+    shapes = shape_stations(table, blade.profiles)
+    frame = PchipInterpolator(shapes.z, np.column_stack([shapes.frame.real, shapes.frame.imag])[:, [0, 2, 1, 3]])
+    columns = [table.chord, table.twist, table.pitch_axis, table.prebend, table.sweep]
+    planform = PchipInterpolator(table.z, np.column_stack([*columns, frame(table.z)]))
+    return Surface(
+        z_ends=table.z[[0, -1]],
+        stations=table.z,
+        shape_z=shapes.z,
+        knots=(shapes.knots[0], shapes.knots[1]),
+        pieces=(_pieces(shapes, 0), _pieces(shapes, 1)),
+        planform=planform,
+        is_mirrored=blade.hand == COUNTER_CLOCKWISE,
+    )
+
+
+def _pieces(shapes: StationShapes, side: int) -> Complex:
+    """(j − 1, n − 1, 4, 4) power coefficients along z and |t| from control points at the stations."""
+    control = shapes.control[side]
+    columns = np.concatenate([control.real, control.imag], axis=1)
+    powers = PchipInterpolator(shapes.z, columns).c[::-1]  # (4, j − 1, 2 n_control), constant first
+    n = control.shape[1]
+    return shapes.power_form(side, np.moveaxis(powers[..., :n] + 1j * powers[..., n:], 0, 1))
