@@ -9,8 +9,8 @@ Composite Materials, from memory; where plain text cannot show what print shows,
 * Two adjacent single plies at +θ and −θ read ``±θ``; at −θ and +θ ``∓θ``.
 * A repeated group stands in round brackets with its count: ``(0/90)_3``. Where the group is the whole list, the count
   stands on the square brackets: ``[0/90]_3``, ``[0]_8``.
-* A symmetric laminate lists its first half and carries ``_S``: ``[0/90]_S``, ``[0/90]_2S``. Where the number of plies is
-  odd, the list ends on the middle ply, which print overlines and this text writes ``bar()``: ``[0/bar(90)]_S`` is
+* A symmetric laminate lists its first half and carries ``_S``: ``[0/90]_S``, ``[0/90]_2S``. Where the number of plies
+  is odd, the list ends on the middle ply, which print overlines and this text writes ``bar()``: ``[0/bar(90)]_S`` is
   0, 90, 0.
 * A hybrid laminate carries the letter of the material in the subscript, behind the count: ``[45_A/0_12B]``. The letters
   are explained by a legend and mean the same in all stacks of a mesh. A material that occurs in several ply thicknesses

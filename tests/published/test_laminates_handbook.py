@@ -4,7 +4,7 @@ Sources, all quoted from memory:
 
 * T300/5208 in Tsai & Hahn, Introduction to Composite Materials, 1980: ply constants, stiffness, invariants and the
   quasi-isotropic laminate.
-* [0/30/−45] of graphite/epoxy, 5 mm a ply, in Kaw, Mechanics of Composite Materials, chapter 4 (the same ply constants):
+* [0/30/−45] of graphite/epoxy, 5 mm a ply, in Kaw, Mechanics of Composite Materials, chapter 4 (same constants):
   A, B and D.
 """
 
