@@ -1,0 +1,144 @@
+"""From elements in the plane to the finished shell mesh."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.definition.blade import COUNTER_CLOCKWISE, BladeDefinition
+from skinmesh.mesh.frames import element_axes
+from skinmesh.mesh.plane import PlaneMesh
+from skinmesh.mesh.shellmesh import BuildReport, Region, ShellMesh
+from skinmesh.skin.cover import StackTable
+from skinmesh.skin.skinmap import SKIN, SkinMap
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+OUTER_OFFSET = 0.5  # the nodes lie on the +e3 face of the laminate
+
+
+def assemble_mesh(
+    blade: BladeDefinition, skin: SkinMap, parts: tuple[PlaneMesh, ...], stacks: StackTable, report: BuildReport
+) -> ShellMesh:
+    """Tie the parts together, lay them on the surface, and give every element its region, stack and axes.
+
+    Joints are tied by identity: nodes of base and webs that lie on a seam take that seam's own coordinates, and nodes
+    with the same coordinates are one node. No distance is ever looked at.
+
+    Parameters
+    ----------
+    blade : BladeDefinition
+    skin : SkinMap
+    parts : tuple of PlaneMesh
+    stacks : StackTable
+    report : BuildReport
+
+    Returns
+    -------
+    ShellMesh
+    """
+    level, seam, sheet, strip = (
+        np.concatenate([np.asarray(getattr(part, name)) for part in parts]) for name in ("level", "seam", "sheet", "strip")
+    )
+    cell_row = (np.min(level, axis=1) // 2).astype(int)
+    order = np.lexsort((np.min(seam, axis=1), strip, cell_row))
+    level, seam, sheet, strip, cell_row = level[order], seam[order], sheet[order], strip[order], cell_row[order]
+    n_sides = level.shape[1] // 2
+    node_sheet, seam = _tie(skin, level, seam, np.repeat(sheet[:, None], level.shape[1], axis=1))
+    keys, cells, n_corners = _number_nodes(level, node_sheet, seam, n_sides)
+    row = np.interp(keys[:, 0], np.arange(len(skin.levels.row)), skin.levels.row)
+    points = skin.points(keys[:, 1].astype(int), row, keys[:, 2])
+    if blade.hand == COUNTER_CLOCKWISE:
+        cells = np.hstack([cells[:, [0, *range(n_sides - 1, 0, -1)]], cells[:, : n_sides - 1 : -1]])
+    connectivity = cells if blade.mesh.order == 2 else cells[:, :n_sides]
+    e1, e2, e3 = element_axes(points, connectivity)
+    regions, region_of_strip = _regions(skin, strip)
+    is_web = np.array([s.kind == "web" for s in skin.strips])[strip]
+    return ShellMesh(
+        title=blade.title,
+        stem=blade.stem,
+        hand=blade.hand,
+        order=blade.mesh.order,
+        surface=blade.mesh.surface,
+        points=points,
+        n_corners=n_corners,
+        cells=cells,
+        region=region_of_strip[strip],
+        stack=stacks.index[strip, cell_row],
+        offset=np.where(is_web, 0.0, OUTER_OFFSET),
+        e1=e1,
+        e2=e2,
+        e3=e3,
+        sheet=keys[:, 1],
+        row=row,
+        seam=keys[:, 2],
+        regions=regions,
+        stacks=stacks.stacks,
+        materials=blade.materials,
+        node_sets=_node_sets(skin, row, keys),
+        element_sets={},
+        node_number=np.arange(1, len(points) + 1),
+        element_number=np.arange(1, len(cells) + 1),
+        sources=blade.sources,
+        report=report,
+    )
+
+
+def _tie(skin: SkinMap, level: Floats, seam: Floats, sheet: Ints) -> tuple[Ints, Floats]:
+    """Give nodes on joints the sheet and seam coordinate of the skin."""
+    seam, sheet = seam.copy(), sheet.copy()
+    last = float(skin.n_seams - 1)
+    for web in skin.webs:
+        own = sheet == web.sheet
+        for height, foot in ((0.0, web.pressure_seam), (1.0, web.suction_seam)):
+            at_foot = own & (seam == height)
+            seam[at_foot], sheet[at_foot] = float(foot), SKIN
+    on_skin = sheet == SKIN
+    closed = np.interp(level, np.arange(len(skin.closing)), skin.closing) == 1.0
+    # the base runs from the last seam back to the first; where the edge is closed all of it is the first seam
+    seam[on_skin & (seam == last + 1.0)] = 0.0
+    seam[on_skin & closed & (seam >= last)] = 0.0
+    return sheet, seam
+
+
+def _number_nodes(level: Floats, sheet: Ints, seam: Floats, n_sides: int) -> tuple[Floats, Ints, int]:
+    """Make one node of equal coordinates, corner nodes first, each kind root to tip."""
+    is_mid = np.zeros(level.shape)
+    is_mid[:, n_sides:] = 1.0
+    keys = np.stack([is_mid, level, sheet, seam], axis=-1).reshape(-1, 4)
+    order = np.lexsort(keys.T[::-1])
+    ordered = keys[order]
+    is_new = np.concatenate([[True], np.any(np.diff(ordered, axis=0) != 0.0, axis=1)])
+    number = np.empty(len(keys), dtype=np.int64)
+    number[order] = np.cumsum(is_new) - 1
+    unique = ordered[is_new]
+    return unique[:, 1:], number.reshape(level.shape), int(np.sum(unique[:, 0] == 0.0))
+
+
+def _regions(skin: SkinMap, strip: Ints) -> tuple[tuple[Region, ...], Ints]:
+    """Regions that have elements, leading to trailing edge, suction side first, then base and webs."""
+    present = set(np.unique(strip).tolist())
+    nose = skin.seams.labels.index("leading edge")
+    by_place = [*range(nose, skin.n_seams - 1), *range(nose - 1, -1, -1), *range(skin.base_strip, len(skin.strips))]
+    regions = tuple(
+        dict.fromkeys(
+            Region(skin.strips[s].name, skin.strips[s].side, skin.strips[s].kind) for s in by_place if s in present
+        )
+    )
+    names = {region.name: i for i, region in enumerate(regions)}
+    return regions, np.array([names.get(s.name, -1) for s in skin.strips])
+
+
+def _node_sets(skin: SkinMap, row: Floats, keys: Floats) -> Mapping[str, Ints]:
+    sets = {"root": np.flatnonzero(row == 0.0), "tip": np.flatnonzero(row == len(skin.rows.z) - 1.0)}
+    for i, z in enumerate(skin.surface.stations):
+        sets[f"station {i:02d}"] = np.flatnonzero(row == float(skin.rows.index(float(z))))
+    on_skin = keys[:, 1] == SKIN
+    for web in skin.webs:
+        in_span = on_skin & (row >= web.first_row) & (row <= web.last_row)
+        for foot, seam in (("suction foot", web.suction_seam), ("pressure foot", web.pressure_seam)):
+            sets[f"{web.name} {foot}"] = np.flatnonzero(in_span & (keys[:, 2] == float(seam)))
+    return sets

@@ -1,0 +1,73 @@
+"""The main job: from a checked blade to its shell mesh."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+
+from skinmesh.definition.blade import BladeDefinition, PlyRule
+from skinmesh.definition.names import resolve_cover
+from skinmesh.mesh.assemble import assemble_mesh
+from skinmesh.mesh.closing import closing_elements
+from skinmesh.mesh.inner_face import find_thick_elements
+from skinmesh.mesh.plane import cut_patches, mesh_patches
+from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
+from skinmesh.skin.cover import cover_strips
+from skinmesh.skin.flatpattern import ply_areas, region_polygons
+from skinmesh.skin.unroll import unroll_skin
+from skinmesh.surface.loft import loft_surface
+
+Progress = Callable[[str, float], None]
+
+
+def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> ShellMesh:
+    """Build the layered shell mesh of a blade.
+
+    Writes no file and leaves no global state behind; works off the main thread.
+
+    Parameters
+    ----------
+    blade : BladeDefinition
+    progress : callable, optional
+        Called with the name of each stage and the share of the work done when it begins.
+
+    Returns
+    -------
+    ShellMesh
+
+    Raises
+    ------
+    InputError
+        The layout does not fit on the skin, or the mesh would be far too large.
+    MeshError
+        The mesh kernel did something other than what it was asked.
+    """
+    tell = progress or (lambda stage, done: None)
+    tell("surface", 0.0)
+    surface = loft_surface(blade)
+    tell("skin", 0.05)
+    skin, warnings = unroll_skin(blade, surface)
+    tell("plies", 0.2)
+
+    def covered(ply: PlyRule) -> frozenset[str]:
+        return frozenset().union(*(resolve_cover(name, blade.layout) for name in ply.covers))
+
+    stacks = cover_strips(blade, skin, covered)
+    report = BuildReport(
+        warnings=(*warnings, *stacks.warnings),
+        ply_end_move=stacks.largest_move,
+        ply_end_place=stacks.move_place,
+        rows=tuple(zip(skin.rows.labels, skin.rows.z.tolist(), strict=True)),
+        seams=skin.seams.labels,
+        stations=surface.stations,
+        developed_areas={name: float(polygon.area) for name, polygon in region_polygons(skin).items()},
+        ply_areas=ply_areas(blade, skin, covered),
+    )
+    tell("mesh", 0.3)
+    parts = (mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape), closing_elements(skin, shape=blade.mesh.shape))
+    tell("elements", 0.5)
+    mesh = assemble_mesh(blade, skin, parts, stacks, report)
+    tell("checks", 0.8)
+    mesh = _with_thick_elements(mesh)
+    tell("done", 1.0)
+    return mesh

@@ -1,0 +1,134 @@
+"""From a blade and its surface to the skin map."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.definition.blade import PRESSURE, SIDE_NAMES, SUCTION, BladeDefinition
+from skinmesh.errors import InputError, Problem
+from skinmesh.skin.divisions import divide_gaps, divide_rows, least_across
+from skinmesh.skin.plyspans import ply_ends
+from skinmesh.skin.rows import Rows, join_rows
+from skinmesh.skin.ruler import Ruler, measure_sections
+from skinmesh.skin.seams import SeamTable, place_seams
+from skinmesh.skin.skinmap import BaseSpan, SkinMap, Strip, WebSheet
+from skinmesh.skin.trailing import OpenSpan, find_open_spans, trailing_gap
+from skinmesh.surface.loft import Surface
+
+Floats = NDArray[np.float64]
+
+N_SPAN_SAMPLES = 240
+MOST_ELEMENTS = 4_000_000
+NEAR_ROW = 0.1  # a web end nearer to a station than this share of the size is moved onto it
+
+
+def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tuple[str, ...]]:
+    """Lay out rows, seams and their divisions.
+
+    Parameters
+    ----------
+    blade : BladeDefinition
+    surface : Surface
+
+    Returns
+    -------
+    SkinMap
+    tuple of str
+        Warnings, each with place and amount.
+
+    Raises
+    ------
+    InputError
+        The layout does not fit on the skin, or the mesh would be far too large.
+    """
+    rule, file = blade.mesh, blade.sources[0].file if blade.sources else blade.stem
+    rows, spans, warnings = _find_rows(blade, surface)
+    samples = np.union1d(rows.z, np.linspace(*surface.z_ends, N_SPAN_SAMPLES))
+    ruler = measure_sections(surface, samples)
+    coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), file=file)
+    gaps = divide_gaps(ruler, coarse, rule)
+    bases = _bases(rows, spans)
+    forced = {base.first_row - 1: 2 for base in bases if base.root_apex} | {base.last_row: 2 for base in bases if base.tip_apex}
+    levels = divide_rows(rows, forced, ruler, coarse, gaps.n, rule)
+    n_elements = int(levels.n.sum()) * int(gaps.n.sum())
+    if n_elements > MOST_ELEMENTS:
+        raise InputError([Problem(file, 0, "mesh.size", f"would make {n_elements / 1e6:.1f} million elements; take a larger size")])
+    seams, seam_warnings = place_seams(
+        blade.layout, measure_sections(surface, levels.z), least_spacing=_spacing(blade, levels.z), file=file
+    )
+    webs = _webs(blade, surface, rows, levels.z, seams)
+    closes = any(base.root_apex or base.tip_apex for base in bases)
+    n_base = 2 if closes else max(1, _base_count(blade, surface, levels.z))
+    strips = (
+        *(Strip(f"{SIDE_NAMES[side]} {name}", side, kind) for side, name, kind in seams.gap_names),
+        Strip("trailing base", 0, "base"),
+        *(Strip(web.name, 0, "web") for web in blade.layout.webs),
+    )
+    skin = SkinMap(
+        surface, rows, levels, seams, gaps, webs, bases, n_base, _closing(rows, bases, levels.row), strips
+    )
+    return skin, (*warnings, *seam_warnings)
+
+
+def _spacing(blade: BladeDefinition, z: Floats) -> Floats | None:
+    return None if blade.mesh.least_spacing is None else blade.mesh.least_spacing(z)
+
+
+def _find_rows(blade: BladeDefinition, surface: Surface) -> tuple[Rows, tuple[OpenSpan, ...], tuple[str, ...]]:
+    z_stations, rule = surface.stations, blade.mesh
+    wanted = [(float(z), f"station {i:02d}") for i, z in enumerate(z_stations)]
+    warnings: list[str] = []
+    for web in blade.layout.webs:
+        for z, name in zip(web.span, ("root end", "tip end"), strict=True):
+            nearest = float(z_stations[np.argmin(np.abs(z_stations - z))])
+            near = abs(nearest - z) < NEAR_ROW * float(rule.size(z))
+            if near and nearest != z:
+                warnings.append(f"{web.name} {name}: moved by {abs(nearest - z):.4f} m onto the station at z = {nearest:.3f} m")
+            wanted.append((nearest if near else float(z), f"{web.name} {name}"))
+    if rule.cut_at_ply_ends:
+        wanted.extend((z, f"end of {name}") for z, name in ply_ends(blade))
+    fixed = np.array([z for z, _ in wanted])
+    size = float(np.min(rule.size(z_stations)))
+    spans, gap_warnings = find_open_spans(surface, rule.close_gap, size=size, fixed=fixed)
+    for span in spans:
+        for z, label in (
+            (span.root_apex, "trailing base root apex"),
+            (span.root if span.root_apex is not None else None, "trailing base root end"),
+            (span.tip if span.tip_apex is not None else None, "trailing base tip end"),
+            (span.tip_apex, "trailing base tip apex"),
+        ):
+            if z is not None:
+                wanted.append((z, label))
+    return join_rows(wanted), spans, (*warnings, *gap_warnings)
+
+
+def _bases(rows: Rows, spans: tuple[OpenSpan, ...]) -> tuple[BaseSpan, ...]:
+    return tuple(
+        BaseSpan(rows.index(span.root), rows.index(span.tip), span.root_apex is not None, span.tip_apex is not None)
+        for span in spans
+    )
+
+
+def _closing(rows: Rows, bases: tuple[BaseSpan, ...], row: Floats) -> Floats:
+    at_rows = np.ones(len(rows.z))
+    for base in bases:
+        at_rows[base.first_row : base.last_row + 1] = 0.0
+    return np.asarray(np.interp(row, np.arange(len(rows.z)), at_rows))
+
+
+def _base_count(blade: BladeDefinition, surface: Surface, z: Floats) -> int:
+    wanted = least_across("trailing base", "trailing base", "base", blade.mesh.across)
+    return max(wanted, int(np.ceil(np.max(trailing_gap(surface, z) / blade.mesh.size(z)) - 1e-6)))
+
+
+def _webs(blade: BladeDefinition, surface: Surface, rows: Rows, z: Floats, seams: SeamTable) -> tuple[WebSheet, ...]:
+    webs = []
+    for i, web in enumerate(blade.layout.webs):
+        low, high = seams.feet[web.name, PRESSURE], seams.feet[web.name, SUCTION]
+        ends = [j for j, label in enumerate(rows.labels) if any(part in (f"{web.name} root end", f"{web.name} tip end") for part in label.split(" + "))]
+        inside = (z >= rows.z[ends[0]] - 1e-9) & (z <= rows.z[ends[1]] + 1e-9)
+        feet = surface.section(z[inside], seams.t[inside, low]), surface.section(z[inside], seams.t[inside, high])
+        n = int(np.ceil(np.max(np.abs(feet[0] - feet[1]) / blade.mesh.size(z[inside])) - 1e-6))
+        webs.append(WebSheet(web.name, i + 1, low, high, ends[0], ends[1], max(n, least_across(web.name, web.name, "web", blade.mesh.across))))
+    return tuple(webs)
