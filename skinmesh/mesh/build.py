@@ -5,6 +5,9 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import replace
 
+import numpy as np
+from numpy.typing import NDArray
+
 from skinmesh.definition.blade import BladeDefinition, PlyRule
 from skinmesh.definition.names import resolve_cover
 from skinmesh.mesh.assemble import assemble_mesh
@@ -71,3 +74,29 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     mesh = _with_thick_elements(mesh)
     tell("done", 1.0)
     return mesh
+
+
+def _with_thick_elements(mesh: ShellMesh) -> ShellMesh:
+    """Name the elements whose laminate is too thick for the surface that carries them."""
+    failing, doubtful = find_thick_elements(mesh)
+    sets = {name: found for name, found in (("folded laminate", failing), ("thick laminate", doubtful)) if len(found)}
+    if not sets:
+        return mesh
+    texts = tuple(_thick_text(mesh, name, found) for name, found in sets.items())
+    report = replace(mesh.report, warnings=mesh.report.warnings + texts)
+    return replace(mesh, element_sets={**mesh.element_sets, **sets}, report=report)
+
+
+def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
+    rule = {
+        "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of layered"
+        " shells stops there; take fewer plies or larger elements",
+        "thick laminate": "fills more than 0.8 of the radius of curvature or is thicker than the element is wide",
+    }[name]
+    regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
+    z = mesh.points[mesh.cells[found, : mesh.n_sides], 2]
+    shown = ", ".join(str(number) for number in mesh.element_number[found][:8])
+    return (
+        f"{name}: the laminate of {len(found)} element{'s' if len(found) > 1 else ''} {rule} ({regions}, z ="
+        f" {z.min():.3f} to {z.max():.3f} m; elements {shown}{', …' if len(found) > 8 else ''})"
+    )
