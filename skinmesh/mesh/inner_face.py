@@ -26,7 +26,8 @@ DOUBTFUL_RATIO = 0.2
 """On a smooth arc the ratio is 1 − depth / radius: below 0.2 the laminate fills more than 0.8 of the radius."""
 
 _CHUNK = 8192
-_LEVELS = (0.5 - 0.5 / np.sqrt(3.0), 0.5 + 0.5 / np.sqrt(3.0))
+_TWO_LEVELS = 0.5 + np.array([-0.5, 0.5]) / np.sqrt(3.0)
+_THREE_LEVELS = 0.5 + np.array([-0.5, 0.0, 0.5]) * np.sqrt(0.6)
 
 _QUAD_NODES = np.array([[-1, -1], [1, -1], [1, 1], [-1, 1], [0, -1], [1, 0], [0, 1], [-1, 0]], dtype=float)
 _QUAD_GAUSS = _QUAD_NODES[:4] / np.sqrt(3.0)
@@ -184,7 +185,7 @@ def inner_face_ratio(mesh: ShellMesh) -> Floats:
 
     The position of a place in the laminate is Y = x + (z − offset·t) n, with x on the reference surface and n the
     interpolated mean normals of the nodes. The ratio is the least value over the integration points, 2 × 2 (3 in a
-    triangle) and two levels in each merged layer, of det[Y_ξ, Y_η, n] there over the same on the reference surface.
+    triangle) and two levels in each merged layer (three in a triangle of one layer), of det[Y_ξ, Y_η, n] there over the same on the reference surface.
     It is 1 − depth / R on a smooth arc of radius R, and at 0 or below a solver refuses the element. Found by
     experiment with CalculiX 2.20: the solver stops where the least ratio is not positive.
 
@@ -265,7 +266,9 @@ def _gauss_levels(mesh: ShellMesh) -> Floats:
     for stack in mesh.stacks:
         thickness = np.array([layer.thickness for layer in merge_equal_layers(stack)])
         top = 0.5 * stack.thickness - np.r_[0.0, np.cumsum(thickness)[:-1]]
-        rows.append(np.ravel(top[:, None] - thickness[:, None] * np.array(_LEVELS)))
+        # A triangle of one layer is an ordinary wedge in the solver, with three levels (seen in CalculiX 2.20).
+        shares = _THREE_LEVELS if mesh.n_sides == 3 and len(thickness) == 1 else _TWO_LEVELS
+        rows.append(np.ravel(top[:, None] - thickness[:, None] * shares))
     width = max((len(row) for row in rows), default=0)
     return np.array([np.pad(row, (0, width - len(row)), mode="edge") for row in rows]).reshape(len(rows), width)
 
