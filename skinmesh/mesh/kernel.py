@@ -14,6 +14,7 @@ _LOCK = threading.RLock()
 _MODEL = "skinmesh"
 _OPTIONS = {
     "General.Terminal": 0.0,
+    "General.Verbosity": 5.0,  # or its warnings never reach us
     "General.NumThreads": 1.0,  # identical bytes from identical input
     "Mesh.Algorithm": 6.0,
     "Mesh.ElementOrder": 1.0,
@@ -62,15 +63,18 @@ class gmsh_session:  # noqa: N801 (used as a function would be)
         for name, value in _OPTIONS.items():
             gmsh.option.setNumber(name, value)
         gmsh.model.add(_MODEL)
+        # Where the caller's logger runs already, gmsh says so in it, and it is not ours to stop.
         gmsh.logger.start()
+        self._already_logged = len(gmsh.logger.get())
         return gmsh
 
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, _traceback: TracebackType | None
     ) -> None:
         try:
-            log = gmsh.logger.get()
-            gmsh.logger.stop()
+            log = gmsh.logger.get()[self._already_logged :]
+            if not self._already_logged:
+                gmsh.logger.stop()
             gmsh.model.remove()
             if self._is_ours:
                 gmsh.finalize()

@@ -14,7 +14,7 @@ from skinmesh.skin.skinmap import SKIN, SkinMap
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
-QUAD8, TRIANGLE6 = 16, 9  # element types of gmsh
+QUADRILATERAL, TRIANGLE = 3, 2  # element types of gmsh
 
 
 @dataclass(frozen=True, eq=False)
@@ -107,7 +107,10 @@ def cut_patches(skin: SkinMap) -> Patches:
 
 
 def mesh_patches(patches: Patches, skin: SkinMap, *, shape: str) -> PlaneMesh:
-    """Mesh all patches with second-order elements.
+    """Mesh all patches.
+
+    The kernel makes corner nodes. Mid nodes are the parametric middles of their edges: the surface, not the plane,
+    says where they lie.
 
     Parameters
     ----------
@@ -125,18 +128,12 @@ def mesh_patches(patches: Patches, skin: SkinMap, *, shape: str) -> PlaneMesh:
     MeshError
         The kernel warned, or made other elements or another number of them than the divisions call for.
     """
-    kind, n_nodes = (QUAD8, 8) if shape == "quad" else (TRIANGLE6, 6)
+    kind, n_sides = (QUADRILATERAL, 4) if shape == "quad" else (TRIANGLE, 3)
     expected = patches.n_across * patches.n_along * (1 if shape == "quad" else 2)
     with gmsh_session() as gmsh:
         for option, value in (
-            ("Mesh.ElementOrder", 2),
-            ("Mesh.SecondOrderIncomplete", 1),
-            ("Mesh.SecondOrderLinear", 1),
-            ("Mesh.RecombineAll", 0),
             ("Mesh.RecombineNodeRepositioning", 0),
             ("Mesh.Smoothing", 0),
-            ("Mesh.HighOrderOptimize", 0),
-            ("Mesh.MeshSizeExtendFromBoundary", 1),
         ):
             gmsh.option.setNumber(option, value)
         surfaces = _enter_patches(gmsh, patches, shape)
@@ -144,7 +141,7 @@ def mesh_patches(patches: Patches, skin: SkinMap, *, shape: str) -> PlaneMesh:
         types = set(gmsh.model.mesh.getElementTypes(2))
         if types != {kind}:
             raise MeshError(f"the mesh kernel made elements of types {sorted(types)}, wanted {kind} alone")
-        blocks = [gmsh.model.mesh.getElementsByType(kind, surface)[1].reshape(-1, n_nodes) for surface in surfaces]
+        blocks = [gmsh.model.mesh.getElementsByType(kind, surface)[1].reshape(-1, n_sides) for surface in surfaces]
         counts = np.array([len(block) for block in blocks])
         if np.any(counts != expected):
             p = int(np.flatnonzero(counts != expected)[0])
@@ -192,10 +189,15 @@ def _parametric(patches: Patches, skin: SkinMap, patch: Ints, nodes: Floats) -> 
     left = corner[:, 0, :, 0] + up * (corner[:, 3, :, 0] - corner[:, 0, :, 0])
     right = corner[:, 1, :, 0] + up * (corner[:, 2, :, 0] - corner[:, 1, :, 0])
     across = (nodes[..., 0] - left) / (right - left)
-    n_up, n_across = 2 * patches.n_along[patch][:, None], 2 * patches.n_across[patch][:, None]
+    n_up, n_across = patches.n_along[patch][:, None], patches.n_across[patch][:, None]
     steps = np.rint(up * n_up), np.rint(across * n_across)
     if max(np.abs(up * n_up - steps[0]).max(), np.abs(across * n_across - steps[1]).max()) > 0.01:
         raise MeshError("the mesh kernel moved nodes off their divisions")
-    level = 2 * skin.levels.row_starts[patches.band[patch]][:, None] + steps[0]
+    level = 2.0 * (skin.levels.row_starts[patches.band[patch]][:, None] + steps[0])
     seam = patches.seam[patch][:, None] + steps[1] / n_across
-    return PlaneMesh(level, seam, patches.sheet[patch], patches.strip[patch])
+    return PlaneMesh(with_middles(level), with_middles(seam), patches.sheet[patch], patches.strip[patch])
+
+
+def with_middles(corners: Floats) -> Floats:
+    """Values at corner and mid nodes, (m, 2k), from those at the corners, (m, k)."""
+    return np.hstack([corners, 0.5 * (corners + np.roll(corners, -1, axis=1))])
