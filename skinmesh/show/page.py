@@ -1,0 +1,114 @@
+"""A page of a fixed width to lay pictures, words and legends on, measured in pixels from its top left corner."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.errors import MissingExtra
+from skinmesh.show.palette import INK, QUIET
+
+Floats = NDArray[np.float64]
+
+WIDTH = 1600
+MARGIN = 50
+DPI = 100
+POINT = 72.0 / DPI
+"""Points a pixel."""
+
+
+class Page:
+    """A white page.
+
+    Parameters
+    ----------
+    height : int
+        In pixels.
+
+    Raises
+    ------
+    MissingExtra
+        matplotlib is not installed.
+    """
+
+    def __init__(self, height: int) -> None:
+        try:
+            from matplotlib.backends.backend_agg import FigureCanvasAgg
+            from matplotlib.figure import Figure
+        except ImportError as error:
+            raise MissingExtra("Pictures need pyvista and matplotlib: pip install pyvista matplotlib") from error
+        self.height = height
+        self.figure: Any = Figure(figsize=(WIDTH / DPI, height / DPI), dpi=DPI, facecolor="white")
+        FigureCanvasAgg(self.figure)
+
+    def text(self, x: float, y: float, words: str, *, size: float = 17, colour: str = INK, **style: Any) -> Any:
+        """Write words; y is the middle of the line, size is in pixels. Returns the text object."""
+        style = {"ha": "left", "va": "center", **style}
+        return self.figure.text(
+            x / WIDTH,
+            1.0 - y / self.height,
+            words,
+            fontsize=size * POINT,
+            color=colour,
+            parse_math=False,
+            family="DejaVu Sans",
+            **style,
+        )
+
+    def width_of(self, text: Any) -> float:
+        """Width of a text object in pixels."""
+        return float(text.get_window_extent(self.figure.canvas.get_renderer()).width)
+
+    def axes(self, left: float, top: float, width: float, height: float, *, extent: tuple[float, ...]) -> Any:
+        """A drawing area without frame whose scales run over an extent (left, right, bottom, top)."""
+        place = (left / WIDTH, 1.0 - (top + height) / self.height, width / WIDTH, height / self.height)
+        axes = self.figure.add_axes(place)
+        axes.set_xlim(extent[:2])
+        axes.set_ylim(extent[2:])
+        axes.set_axis_off()
+        return axes
+
+    def box(self, left: float, top: float, width: float, height: float, *, colour: Any) -> None:
+        """A filled box."""
+        from matplotlib.patches import Rectangle
+
+        corner = (left / WIDTH, 1.0 - (top + height) / self.height)
+        self.figure.add_artist(
+            Rectangle(corner, width / WIDTH, height / self.height, facecolor=colour, edgecolor=QUIET, linewidth=0.4)
+        )
+
+    def swatches(self, left: float, top: float, names: Mapping[str, Any]) -> float:
+        """Boxes of colour, each with its name to the right, in as many lines as they need.
+
+        Returns
+        -------
+        float
+            y of the last line's middle.
+        """
+        x = left
+        y = top
+        for name, colour in names.items():
+            label = self.text(x + 32, y, name)
+            width = 32 + self.width_of(label) + 30
+            if x + width > WIDTH - MARGIN + 30 and x > left:
+                x, y = left, y + 30
+                label.set_position(((x + 32) / WIDTH, 1.0 - y / self.height))
+            self.box(x, y - 9, 24, 18, colour=colour)
+            x += width
+        return y
+
+    def steps(self, left: float, top: float, width: float, *, levels: Floats, colours: Floats) -> None:
+        """A row of boxes of colour with the bounds of the steps under it."""
+        step = width / len(colours)
+        for k, colour in enumerate(colours):
+            self.box(left + k * step, top - 9, step, 18, colour=colour)
+        for k, level in enumerate(levels):
+            self.text(left + k * step, top + 21, f"{level:g}", size=15, ha="center")
+
+    def save(self, path: Path) -> None:
+        """Write the page as PNG."""
+        self.figure.savefig(path, dpi=DPI, format="png", metadata={"Software": None})
