@@ -30,7 +30,12 @@ from skinmesh.mesh.kernel import gmsh_session
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
 
-CASES = [(hand, order, shape) for hand in ("clockwise", "counter-clockwise") for order in (1, 2) for shape in ("quad", "triangle")]
+CASES = [
+    (hand, order, shape)
+    for hand in ("clockwise", "counter-clockwise")
+    for order in (1, 2)
+    for shape in ("quad", "triangle")
+]
 
 
 @pytest.fixture(scope="module", params=CASES, ids=lambda case: "-".join(map(str, case)))
@@ -66,7 +71,9 @@ def test_edges_are_shared_by_two_elements_and_three_at_web_feet(mesh):
     assert len(threefold)
     assert np.all(feet[threefold])
     n_foot_edges = sum(
-        len(mesh.node_set(name)[mesh.node_set(name) < mesh.n_corners]) - 1 for name in mesh.node_sets if name.endswith("foot")
+        len(mesh.node_set(name)[mesh.node_set(name) < mesh.n_corners]) - 1
+        for name in mesh.node_sets
+        if name.endswith("foot")
     )
     assert len(threefold) == n_foot_edges
 
@@ -313,14 +320,22 @@ WEBS = [
 ]
 
 
-@pytest.mark.parametrize(("name", "place", "span"), WEBS, ids=[w[0] for w in WEBS])
-def test_a_web_may_stand_anywhere(name, place, span):
+@pytest.mark.parametrize(("place", "span"), [web[1:] for web in WEBS], ids=[web[0] for web in WEBS])
+def test_a_web_may_stand_anywhere(place, span):
     table = stations([0, 4, 10], [1.5, 1.2, 0.6], ["n", "n", "n"], twist_degrees=[12, 5, 0], pitch_axis=0.35)
     layout = Layout(
         caps=(CapRule("cap", FromAxis(constant(0.0)), Spanwise([0, 10], [0.3, 0.15]), BOTH),),
         webs=(WebRule("web", foot(place), span),),
     )
-    mesh = build_mesh(blade(table, {"n": NacaProfile("0021")}, layout=layout, plies=[skin_ply(), PlyRule("w", FOAM, constant(0.01), constant(1), 0.0, ("webs",))], mesh=rule(0.15)))
+    mesh = build_mesh(
+        blade(
+            table,
+            {"n": NacaProfile("0021")},
+            layout=layout,
+            plies=[skin_ply(), PlyRule("w", FOAM, constant(0.01), constant(1), 0.0, ("webs",))],
+            mesh=rule(0.15),
+        )
+    )
     assert stray_free_edges(mesh) == 0
     assert outward_share(mesh) == 1.0
     web = [region.name for region in mesh.regions].index("web")
@@ -357,7 +372,9 @@ def test_cap_width_is_the_wanted_arc_along_the_whole_span():
 
 def test_several_caps_make_numbered_middle_panels():
     table = stations([0, 5], [1.5, 1.0], ["n", "n"], pitch_axis=0.35)
-    caps = tuple(CapRule(f"cap {i}", ChordFraction(constant(c)), constant(0.1), BOTH) for i, c in enumerate((0.6, 0.25, 0.42)))
+    caps = tuple(
+        CapRule(f"cap {i}", ChordFraction(constant(c)), constant(0.1), BOTH) for i, c in enumerate((0.6, 0.25, 0.42))
+    )
     mesh = build_mesh(blade(table, {"n": NacaProfile("0021")}, layout=Layout(caps=caps), mesh=rule(0.2)))
     names = [region.name for region in mesh.regions if region.side == 1]
     assert names == [
@@ -369,7 +386,9 @@ def test_several_caps_make_numbered_middle_panels():
 def test_seams_keep_their_spacing_on_a_narrow_tip_and_say_so():
     table = stations([0, 5, 10], [1.5, 1.0, 0.25], ["n", "n", "n"], pitch_axis=0.35)
     layout = Layout(
-        caps=(CapRule("cap", FromAxis(constant(0.0)), constant(0.2), BOTH),), leading_strip=constant(0.1), trailing_strip=constant(0.1)
+        caps=(CapRule("cap", FromAxis(constant(0.0)), constant(0.2), BOTH),),
+        leading_strip=constant(0.1),
+        trailing_strip=constant(0.1),
     )
     mesh = build_mesh(blade(table, {"n": NacaProfile("0021")}, layout=layout, mesh=rule(0.15)))
     told = [text for text in mesh.report.warnings if "to keep" in text]

@@ -38,7 +38,7 @@ class Spanwise:
 
     def __call__(self, z: ArrayLike) -> NDArray[np.float64]:
         """Value at z, of the shape of z."""
-        return np.asarray(np.interp(z, self.z, self.value), dtype=float)
+        return np.asarray(np.interp(np.asarray(z, dtype=np.float64), self.z, self.value), dtype=np.float64)
 
     @property
     def is_constant(self) -> bool:

@@ -41,7 +41,8 @@ def assemble_mesh(
     ShellMesh
     """
     level, seam, sheet, strip = (
-        np.concatenate([np.asarray(getattr(part, name)) for part in parts]) for name in ("level", "seam", "sheet", "strip")
+        np.concatenate([np.asarray(getattr(part, name)) for part in parts])
+        for name in ("level", "seam", "sheet", "strip")
     )
     cell_row = (np.min(level, axis=1) // 2).astype(int)
     order = np.lexsort((np.min(seam, axis=1), strip, cell_row))
@@ -72,7 +73,7 @@ def assemble_mesh(
         e1=e1,
         e2=e2,
         e3=e3,
-        sheet=keys[:, 1],
+        sheet=keys[:, 1].astype(int),
         row=row,
         seam=keys[:, 2],
         regions=regions,

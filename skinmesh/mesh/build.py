@@ -45,7 +45,7 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     MeshError
         The mesh kernel did something other than what it was asked.
     """
-    tell = progress or (lambda stage, done: None)
+    tell = progress or _silent
     tell("surface", 0.0)
     surface = loft_surface(blade)
     tell("skin", 0.05)
@@ -67,7 +67,10 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
         ply_areas=ply_areas(blade, skin, covered),
     )
     tell("mesh", 0.3)
-    parts = (mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape), closing_elements(skin, shape=blade.mesh.shape))
+    parts = (
+        mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape),
+        closing_elements(skin, shape=blade.mesh.shape),
+    )
     tell("elements", 0.5)
     mesh = assemble_mesh(blade, skin, parts, stacks, report)
     tell("checks", 0.8)
@@ -89,8 +92,8 @@ def _with_thick_elements(mesh: ShellMesh) -> ShellMesh:
 
 def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
     rule = {
-        "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of layered"
-        " shells stops there; take fewer plies or larger elements",
+        "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of"
+        " layered shells stops there; take fewer plies or larger elements",
         "thick laminate": "fills more than 0.8 of the radius of curvature or is thicker than the element is wide",
     }[name]
     regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
@@ -100,3 +103,7 @@ def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
         f"{name}: the laminate of {len(found)} element{'s' if len(found) > 1 else ''} {rule} ({regions}, z ="
         f" {z.min():.3f} to {z.max():.3f} m; elements {shown}{', …' if len(found) > 8 else ''})"
     )
+
+
+def _silent(stage: str, done: float) -> None:
+    """Progress that nobody wants to hear of."""

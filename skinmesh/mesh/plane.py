@@ -85,7 +85,9 @@ def cut_patches(skin: SkinMap) -> Patches:
     for base in skin.bases:
         rows = np.arange(base.first_row, base.last_row + 1)
         edges = np.tile([0.0, 1.0], (len(rows), 1))
-        grids.append((SKIN, edges, rows, np.array([skin.base_strip]), np.array([float(n_gaps)]), np.array([skin.n_base])))
+        grids.append(
+            (SKIN, edges, rows, np.array([skin.base_strip]), np.array([float(n_gaps)]), np.array([skin.n_base]))
+        )
     for web in skin.webs:
         rows = np.arange(web.first_row, web.last_row + 1)
         edges = np.tile([0.0, 1.0], (len(rows), 1))
@@ -99,11 +101,19 @@ def cut_patches(skin: SkinMap) -> Patches:
         n_points += x.size
         corners = np.stack([number[:-1, :-1], number[:-1, 1:], number[1:, 1:], number[1:, :-1]], axis=-1)
         band, across = np.meshgrid(rows[:-1], np.arange(len(strips)), indexing="ij")
-        parts.append((
-            strips[across].ravel(), np.full(band.size, sheet), band.ravel(), seams[across].ravel(),
-            n_across[across].ravel(), skin.levels.n[band].ravel(), corners.reshape(-1, 4),
-        ))
-    return Patches(*(np.concatenate(columns) for columns in zip(*parts, strict=True)), np.concatenate(points))
+        parts.append(
+            (
+                strips[across].ravel(),
+                np.full(band.size, sheet),
+                band.ravel(),
+                seams[across].ravel(),
+                n_across[across].ravel(),
+                skin.levels.n[band].ravel(),
+                corners.reshape(-1, 4),
+            )
+        )
+    strip, sheet_of, band, seam, across, along, point = (np.concatenate(column) for column in zip(*parts, strict=True))
+    return Patches(strip, sheet_of, band, seam, across, along, point, np.concatenate(points))
 
 
 def mesh_patches(patches: Patches, skin: SkinMap, *, shape: str) -> PlaneMesh:
@@ -174,7 +184,9 @@ def _enter_patches(gmsh, patches: Patches, shape: str) -> list[int]:  # type: ig
     surfaces = []
     for loop, corners in zip(signed, patches.point, strict=True):
         surface = geo.addPlaneSurface([geo.addCurveLoop(loop.tolist())])
-        geo.mesh.setTransfiniteSurface(surface, "Alternate" if shape == "triangle" else "Left", [points[c] for c in corners])
+        geo.mesh.setTransfiniteSurface(
+            surface, "Alternate" if shape == "triangle" else "Left", [points[c] for c in corners]
+        )
         if shape == "quad":
             geo.mesh.setRecombine(2, surface)
         surfaces.append(surface)
@@ -198,6 +210,6 @@ def _parametric(patches: Patches, skin: SkinMap, patch: Ints, nodes: Floats) -> 
     return PlaneMesh(with_middles(level), with_middles(seam), patches.sheet[patch], patches.strip[patch])
 
 
-def with_middles(corners: Floats) -> Floats:
+def with_middles(corners: NDArray[np.floating]) -> Floats:
     """Values at corner and mid nodes, (m, 2k), from those at the corners, (m, k)."""
     return np.hstack([corners, 0.5 * (corners + np.roll(corners, -1, axis=1))])

@@ -130,8 +130,8 @@ def _lay(ply: PlyRule, span: tuple[float, float], z: Floats) -> _Laid:
 
 def _lost_text(ply: PlyRule, stretch: LayerSpan) -> str:
     return (
-        f"ply '{ply.name}', layer {stretch.layer}: from z = {stretch.root:.3f} to {stretch.tip:.3f} m it is shorter than"
-        " an element row and is left out"
+        f"ply '{ply.name}', layer {stretch.layer}: from z = {stretch.root:.3f} to {stretch.tip:.3f} m it is shorter"
+        " than an element row and is left out"
     )
 
 

@@ -105,9 +105,7 @@ def _by_row(grid: Floats, values: Floats, x: Floats) -> Floats:
     """Interpolate each row of values at its own row of x."""
     j = np.clip(np.searchsorted(grid, x, side="right") - 1, 0, len(grid) - 2)
     u = (x - grid[j]) / (grid[j + 1] - grid[j])
-    return np.asarray(
-        np.take_along_axis(values, j, axis=1) * (1.0 - u) + np.take_along_axis(values, j + 1, axis=1) * u
-    )
+    return np.asarray(np.take_along_axis(values, j, axis=1) * (1.0 - u) + np.take_along_axis(values, j + 1, axis=1) * u)
 
 
 def _at_least(n: Ints, seams: SeamTable, across: Mapping[str, int]) -> Ints:
@@ -127,7 +125,9 @@ def least_across(full_name: str, name: str, kind: str, across: Mapping[str, int]
     return across.get(full_name, across.get(name, LEAST_ACROSS.get(kind, 1)))
 
 
-def divide_rows(rows: Rows, forced: Mapping[int, int], ruler: Ruler, seams: SeamTable, n_gap: Ints, rule: MeshRule) -> Levels:
+def divide_rows(
+    rows: Rows, forced: Mapping[int, int], ruler: Ruler, seams: SeamTable, n_gap: Ints, rule: MeshRule
+) -> Levels:
     """Choose the element rows.
 
     Parameters
@@ -154,7 +154,11 @@ def divide_rows(rows: Rows, forced: Mapping[int, int], ruler: Ruler, seams: Seam
         ends = np.interp([low, high], ruler.z, passed)
         count = forced.get(i) or max(1, int(np.ceil(ends[1] - ends[0] - 1e-6)))
         share = np.arange(1, count + 1) / count
-        corner = np.interp(ends[0] + share * (ends[1] - ends[0]), passed, ruler.z) if i not in forced else low + share * (high - low)
+        corner = (
+            np.interp(ends[0] + share * (ends[1] - ends[0]), passed, ruler.z)
+            if i not in forced
+            else low + share * (high - low)
+        )
         corner[-1] = high
         before = np.concatenate([[low], corner[:-1]])
         z.append(np.column_stack([0.5 * (before + corner), corner]).ravel())

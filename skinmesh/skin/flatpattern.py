@@ -64,7 +64,7 @@ def ply_areas(
     """
     whole = (float(skin.rows.z[0]), float(skin.rows.z[-1]))
     polygons = dict(region_polygons(skin))
-    spans = {name: whole for name in polygons}
+    spans = dict.fromkeys(polygons, whole)
     for web in skin.webs:
         spans[web.name] = (float(skin.rows.z[web.first_row]), float(skin.rows.z[web.last_row]))
         polygons[web.name] = _web_band(skin, web.sheet)

@@ -129,11 +129,15 @@ def _collect(layout: Layout, ruler: Ruler, side: int, problems: list[Problem], f
         too_wide = width >= length
         if too_wide.any():
             i = int(np.argmax(width - length))
-            problems.append(Problem(
-                file, 0, f"layout.caps.{cap.name}.width",
-                f"the cap is wider than the {SIDE_NAMES[side]} skin at z = {z[i]:.3f} m: {width[i]:.4f} m on"
-                f" {length[i]:.4f} m of arc; make it narrower there",
-            ))
+            problems.append(
+                Problem(
+                    file,
+                    0,
+                    f"layout.caps.{cap.name}.width",
+                    f"the cap is wider than the {SIDE_NAMES[side]} skin at z = {z[i]:.3f} m: {width[i]:.4f} m on"
+                    f" {length[i]:.4f} m of arc; make it narrower there",
+                )
+            )
         centre = _arc_of_place(cap.centre, ruler, side, cap.plane_twist)
         edges[cap.name] = (centre - 0.5 * width, centre + 0.5 * width)
         seams.append(SideSeam((f"{cap.name} fore edge",), edges[cap.name][0], True, whole))
@@ -209,12 +213,16 @@ def _spread(
     room = length - spacing * (len(seams) + 1)
     if np.any(room < 0.0):
         i = int(np.argmin(room))
-        problems.append(Problem(
-            file, 0, "layout",
-            f"{len(seams)} seams do not fit on the {SIDE_NAMES[side]} side at z = {ruler.z[i]:.3f} m: its"
-            f" {length[i]:.4f} m of arc leave less than the least spacing of {spacing[i]:.4f} m; take fewer regions or"
-            " a smaller mesh.least_spacing",
-        ))
+        problems.append(
+            Problem(
+                file,
+                0,
+                "layout",
+                f"{len(seams)} seams do not fit on the {SIDE_NAMES[side]} side at z = {ruler.z[i]:.3f} m: its"
+                f" {length[i]:.4f} m of arc leave less than the least spacing of {spacing[i]:.4f} m; take fewer regions"
+                " or a smaller mesh.least_spacing",
+            )
+        )
         return wanted
     # both passes keep the spacing; so does their mean, and it favours neither edge
     rising = _push_down(_push_up(wanted, spacing), spacing)
@@ -261,14 +269,16 @@ def _join(layout: Layout, ruler: Ruler, tables: dict[int, tuple[list[SideSeam], 
                 if f"{web.name} foot" in seam.labels:
                     feet[web.name, side] = position
     tau = {
-        side: np.column_stack([ruler.tau_at_arc(side, column) for column in arc.T])
-        for side, (_, arc) in tables.items()
+        side: np.column_stack([ruler.tau_at_arc(side, column) for column in arc.T]) for side, (_, arc) in tables.items()
     }
     for values in tau.values():
         values[:, 0], values[:, -1] = 0.0, 1.0
     return SeamTable(
         labels=(
-            "pressure trailing edge", *labels[PRESSURE][::-1], "leading edge", *labels[SUCTION],
+            "pressure trailing edge",
+            *labels[PRESSURE][::-1],
+            "leading edge",
+            *labels[SUCTION],
             "suction trailing edge",
         ),
         t=np.hstack([-tau[PRESSURE][:, :0:-1], tau[SUCTION]]),

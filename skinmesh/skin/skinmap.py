@@ -155,7 +155,10 @@ class SkinMap:
         for web in self.webs:
             own = sheet == web.sheet
             height = seam[own][:, None]
-            feet = [self._skin_points(row[own], np.full(height.size, float(k))) for k in (web.pressure_seam, web.suction_seam)]
+            feet = [
+                self._skin_points(row[own], np.full(height.size, float(k)))
+                for k in (web.pressure_seam, web.suction_seam)
+            ]
             out[own] = feet[0] * (1.0 - height) + feet[1] * height
         return out
 

@@ -64,39 +64,61 @@ def find_open_spans(
     stations = surface.stations
     share = np.linspace(0.0, 1.0, N_SAMPLES, endpoint=False)
     z = np.append((stations[:-1, None] + share * np.diff(stations)[:, None]).ravel(), stations[-1])
-    excess = trailing_gap(surface, z) - close_gap
-    is_open = excess >= 0.0
-    change = np.flatnonzero(np.diff(is_open.astype(int)))
-    crossing = z[change] + (z[change + 1] - z[change]) * excess[change] / (excess[change] - excess[change + 1])
-    bounds = np.concatenate([[z[0]], crossing, [z[-1]]])
-    warnings: list[str] = []
+    gap = trailing_gap(surface, z)
     spans: list[OpenSpan] = []
-    for i in range(int(not is_open[0]), len(bounds) - 1, 2):
-        root_edge, tip_edge = float(bounds[i]), float(bounds[i + 1])
-        # the neighbouring closed parts are shared with the next open part: half of them is free
-        before = float(bounds[i - 1]) if i == 1 else 0.5 * float(bounds[i - 1] + bounds[i]) if i else root_edge
-        last = i + 2 == len(bounds) - 1
-        after = tip_edge if i + 1 == len(bounds) - 1 else float(bounds[-1]) if last else 0.5 * float(sum(bounds[i + 1 : i + 3]))
-        root, root_apex = _closing(root_edge, -1.0, abs(root_edge - before), size, fixed)
-        tip, tip_apex = _closing(tip_edge, 1.0, abs(after - tip_edge), size, fixed)
+    warnings: list[str] = []
+    for part in _open_parts(z, gap - close_gap):
+        root, root_apex = _closing(part.root, -1.0, part.room_before, size, fixed)
+        tip, tip_apex = _closing(part.tip, 1.0, part.room_after, size, fixed)
         if tip - root < LEAST_STRETCH * size:
+            largest = gap[(z >= part.root) & (z <= part.tip)].max(initial=close_gap)
             warnings.append(
-                f"trailing edge: the gap is open over only {tip_edge - root_edge:.3f} m at z = {root_edge:.3f} m and"
-                f" was closed there; it is up to {np.max(excess[(z >= root_edge) & (z <= tip_edge)], initial=0.0) + close_gap:.4f} m"
+                f"trailing edge: between z = {part.root:.3f} and {part.tip:.3f} m the gap of up to {largest:.4f} m is"
+                " open over less than an element row, and was closed"
             )
             continue
-        for edge, apex, free in ((root_edge, root_apex, abs(root_edge - before)), (tip_edge, tip_apex, abs(after - tip_edge))):
-            if apex is None and free > 0.0:
-                warnings.append(
-                    f"trailing edge: from z = {edge:.3f} m the gap is under close_gap, but there is no room to close it"
-                    f" over two element rows; it stays open for {free:.3f} m"
-                )
-        spans.append(OpenSpan(
-            root if root_apex is not None or i == 0 else before,
-            tip if tip_apex is not None or i + 1 == len(bounds) - 1 else after,
-            root_apex, tip_apex,
-        ))
+        if root_apex is None and part.room_before > 0.0:
+            root = part.root - part.room_before
+            warnings.append(_no_room(root, part.root))
+        if tip_apex is None and part.room_after > 0.0:
+            tip = part.tip + part.room_after
+            warnings.append(_no_room(part.tip, tip))
+        spans.append(OpenSpan(root, tip, root_apex, tip_apex))
     return tuple(spans), tuple(warnings)
+
+
+@dataclass(frozen=True)
+class _OpenPart:
+    """A stretch with an open gap, and how much of the closed stretches beside it its closings may take."""
+
+    root: float
+    tip: float
+    room_before: float
+    room_after: float
+
+
+def _open_parts(z: Floats, excess: Floats) -> list[_OpenPart]:
+    is_open = excess >= 0.0
+    change = np.flatnonzero(is_open[:-1] != is_open[1:])
+    crossing = z[change] + (z[change + 1] - z[change]) * excess[change] / (excess[change] - excess[change + 1])
+    bounds = [float(z[0]), *crossing.tolist(), float(z[-1])]
+    first = 0 if is_open[0] else 1
+    parts = []
+    for i in range(first, len(bounds) - 1, 2):
+        before = bounds[i] - bounds[i - 1] if i else 0.0
+        after = bounds[i + 2] - bounds[i + 1] if i + 2 < len(bounds) else 0.0
+        # a closed stretch between two open ones serves both
+        before *= 0.5 if i - 1 > 0 else 1.0
+        after *= 0.5 if i + 2 < len(bounds) - 1 else 1.0
+        parts.append(_OpenPart(bounds[i], bounds[i + 1], before, after))
+    return parts
+
+
+def _no_room(root: float, tip: float) -> str:
+    return (
+        f"trailing edge: from z = {root:.3f} to {tip:.3f} m the gap is under close_gap, but the stretch is too short to"
+        " close it; it stays open"
+    )
 
 
 def _closing(edge: float, sense: float, free: float, size: float, fixed: Floats) -> tuple[float, float | None]:

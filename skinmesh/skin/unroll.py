@@ -10,7 +10,7 @@ from skinmesh.errors import InputError, Problem
 from skinmesh.skin.divisions import divide_gaps, divide_rows, least_across
 from skinmesh.skin.plyspans import ply_ends
 from skinmesh.skin.rows import Rows, join_rows
-from skinmesh.skin.ruler import Ruler, measure_sections
+from skinmesh.skin.ruler import measure_sections
 from skinmesh.skin.seams import SeamTable, place_seams
 from skinmesh.skin.skinmap import BaseSpan, SkinMap, Strip, WebSheet
 from skinmesh.skin.trailing import OpenSpan, find_open_spans, trailing_gap
@@ -44,16 +44,20 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
     """
     rule, file = blade.mesh, blade.sources[0].file if blade.sources else blade.stem
     rows, spans, warnings = _find_rows(blade, surface)
-    samples = np.union1d(rows.z, np.linspace(*surface.z_ends, N_SPAN_SAMPLES))
+    samples = np.union1d(rows.z, np.linspace(surface.z_ends[0], surface.z_ends[1], N_SPAN_SAMPLES))
     ruler = measure_sections(surface, samples)
     coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), file=file)
     gaps = divide_gaps(ruler, coarse, rule)
     bases = _bases(rows, spans)
-    forced = {base.first_row - 1: 2 for base in bases if base.root_apex} | {base.last_row: 2 for base in bases if base.tip_apex}
+    forced = {base.first_row - 1: 2 for base in bases if base.root_apex} | {
+        base.last_row: 2 for base in bases if base.tip_apex
+    }
     levels = divide_rows(rows, forced, ruler, coarse, gaps.n, rule)
     n_elements = int(levels.n.sum()) * int(gaps.n.sum())
     if n_elements > MOST_ELEMENTS:
-        raise InputError([Problem(file, 0, "mesh.size", f"would make {n_elements / 1e6:.1f} million elements; take a larger size")])
+        raise InputError(
+            [Problem(file, 0, "mesh.size", f"would make {n_elements / 1e6:.1f} million elements; take a larger size")]
+        )
     seams, seam_warnings = place_seams(
         blade.layout, measure_sections(surface, levels.z), least_spacing=_spacing(blade, levels.z), file=file
     )
@@ -65,9 +69,7 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
         Strip("trailing base", 0, "base"),
         *(Strip(web.name, 0, "web") for web in blade.layout.webs),
     )
-    skin = SkinMap(
-        surface, rows, levels, seams, gaps, webs, bases, n_base, _closing(rows, bases, levels.row), strips
-    )
+    skin = SkinMap(surface, rows, levels, seams, gaps, webs, bases, n_base, _closing(rows, bases, levels.row), strips)
     return skin, (*warnings, *seam_warnings)
 
 
@@ -84,7 +86,9 @@ def _find_rows(blade: BladeDefinition, surface: Surface) -> tuple[Rows, tuple[Op
             nearest = float(z_stations[np.argmin(np.abs(z_stations - z))])
             near = abs(nearest - z) < NEAR_ROW * float(rule.size(z))
             if near and nearest != z:
-                warnings.append(f"{web.name} {name}: moved by {abs(nearest - z):.4f} m onto the station at z = {nearest:.3f} m")
+                warnings.append(
+                    f"{web.name} {name}: moved by {abs(nearest - z):.4f} m onto the station at z = {nearest:.3f} m"
+                )
             wanted.append((nearest if near else float(z), f"{web.name} {name}"))
     if rule.cut_at_ply_ends:
         wanted.extend((z, f"end of {name}") for z, name in ply_ends(blade))
@@ -92,14 +96,10 @@ def _find_rows(blade: BladeDefinition, surface: Surface) -> tuple[Rows, tuple[Op
     size = float(np.min(rule.size(z_stations)))
     spans, gap_warnings = find_open_spans(surface, rule.close_gap, size=size, fixed=fixed)
     for span in spans:
-        for z, label in (
-            (span.root_apex, "trailing base root apex"),
-            (span.root if span.root_apex is not None else None, "trailing base root end"),
-            (span.tip if span.tip_apex is not None else None, "trailing base tip end"),
-            (span.tip_apex, "trailing base tip apex"),
-        ):
-            if z is not None:
-                wanted.append((z, label))
+        if span.root_apex is not None:
+            wanted += [(span.root_apex, "trailing base root apex"), (span.root, "trailing base root end")]
+        if span.tip_apex is not None:
+            wanted += [(span.tip, "trailing base tip end"), (span.tip_apex, "trailing base tip apex")]
     return join_rows(wanted), spans, (*warnings, *gap_warnings)
 
 
@@ -126,9 +126,23 @@ def _webs(blade: BladeDefinition, surface: Surface, rows: Rows, z: Floats, seams
     webs = []
     for i, web in enumerate(blade.layout.webs):
         low, high = seams.feet[web.name, PRESSURE], seams.feet[web.name, SUCTION]
-        ends = [j for j, label in enumerate(rows.labels) if any(part in (f"{web.name} root end", f"{web.name} tip end") for part in label.split(" + "))]
+        ends = [
+            j
+            for j, label in enumerate(rows.labels)
+            if any(part in (f"{web.name} root end", f"{web.name} tip end") for part in label.split(" + "))
+        ]
         inside = (z >= rows.z[ends[0]] - 1e-9) & (z <= rows.z[ends[1]] + 1e-9)
         feet = surface.section(z[inside], seams.t[inside, low]), surface.section(z[inside], seams.t[inside, high])
         n = int(np.ceil(np.max(np.abs(feet[0] - feet[1]) / blade.mesh.size(z[inside])) - 1e-6))
-        webs.append(WebSheet(web.name, i + 1, low, high, ends[0], ends[1], max(n, least_across(web.name, web.name, "web", blade.mesh.across))))
+        webs.append(
+            WebSheet(
+                web.name,
+                i + 1,
+                low,
+                high,
+                ends[0],
+                ends[1],
+                max(n, least_across(web.name, web.name, "web", blade.mesh.across)),
+            )
+        )
     return tuple(webs)

@@ -149,7 +149,9 @@ class Surface:
         results = [np.empty(z_flat.size, dtype=complex) for _ in range(3 if derivatives else 1)]
         for start in range(0, z_flat.size, CHUNK):
             part = slice(start, start + CHUNK)
-            for whole, piece in zip(results, self._evaluate_chunk(z_flat[part], t_flat[part], derivatives), strict=True):
+            for whole, piece in zip(
+                results, self._evaluate_chunk(z_flat[part], t_flat[part], derivatives), strict=True
+            ):
                 whole[part] = piece
         return tuple(result.reshape(shape) for result in results)
 

@@ -173,9 +173,7 @@ def _split_loop(loop: Complex) -> UnitShape:
     nose = _at(curve, np.array([nose_u]))[0]
     chord = trailing - nose
     own_axes = (
-        trailing.real > 0.0
-        and abs(nose) < OWN_AXES * trailing.real
-        and abs(trailing.imag) < OWN_AXES * trailing.real
+        trailing.real > 0.0 and abs(nose) < OWN_AXES * trailing.real and abs(trailing.imag) < OWN_AXES * trailing.real
     )
     origin, scale = (nose / trailing.real, chord / trailing.real) if own_axes else (0j, 1 + 0j)
     tiny = 1e-5 * u[-1]

@@ -86,7 +86,8 @@ def shape_stations(table: StationTable, profiles: Mapping[str, Profile]) -> Stat
     plain = {name: read_unit_shape(profiles[name]) for name in dict.fromkeys(table.profile) if name is not None}
     shapes = [_scaled(plain[str(table.profile[i])], table.thickness_ratio[i]) for i in named]
     knots = tuple(
-        np.unique(np.concatenate([(shape.suction if side else shape.pressure).t for shape in shapes])) for side in (0, 1)
+        np.unique(np.concatenate([(shape.suction if side else shape.pressure).t for shape in shapes]))
+        for side in (0, 1)
     )
     control = tuple(
         np.stack([_control_points(shape.suction if side else shape.pressure, knots[side]) for shape in shapes])
@@ -94,9 +95,7 @@ def shape_stations(table: StationTable, profiles: Mapping[str, Profile]) -> Stat
     )
     frame = np.array([[shape.origin, shape.scale] for shape in shapes])
     known = StationShapes(table.z[named], (knots[0], knots[1]), (control[0], control[1]), frame)
-    blank = [
-        i for i, name in enumerate(table.profile) if name is None and not np.isnan(table.thickness_ratio[i])
-    ]
+    blank = [i for i, name in enumerate(table.profile) if name is None and not np.isnan(table.thickness_ratio[i])]
     return _with_blends(known, table, blank) if blank else known
 
 
