@@ -203,7 +203,7 @@ class IndependentBlade:
 
     def __init__(self, path: str | Path) -> None:
         path = Path(path)
-        self.spec: dict[str, Any] = yaml.load(path.read_text(encoding="utf-8"), Loader=_Yaml12)  # noqa: S506
+        self.spec: dict[str, Any] = yaml.load(path.read_text(encoding="utf-8"), Loader=_Yaml12)
         table_path = path.parent / self.spec["planform"]
         lines = [x for x in table_path.read_text(encoding="utf-8").splitlines() if x.split("#")[0].strip()]
         rows = [{k.strip(): (v or "").strip() for k, v in row.items()} for row in csv.DictReader(lines)]
