@@ -41,6 +41,8 @@ class MassProperties:
     region_mass : mapping of str to float, kg
     material_mass : mapping of str to float, kg
         Every material of the mesh, 0 where it is not used.
+    stack_area : (s,) float array, m²
+        Of the elements that carry each stack.
     """
 
     area: float
@@ -52,12 +54,14 @@ class MassProperties:
     region_area: Mapping[str, float]
     region_mass: Mapping[str, float]
     material_mass: Mapping[str, float]
+    stack_area: Floats
 
     def __post_init__(self) -> None:
         for name in ("centre", "first_moments"):
             freeze_array(self, name, shape=(3,))
         for name in ("inertia_origin", "inertia_centre"):
             freeze_array(self, name, shape=(3, 3))
+        freeze_array(self, "stack_area", shape=(None,))
 
 
 def element_areas(mesh: ShellMesh) -> Floats:
@@ -143,6 +147,10 @@ def mass_properties(mesh: ShellMesh) -> MassProperties:
         second += (at * mass[:, None]).T @ at
         second += (normal.reshape(-1, 3) * across[:, None]).T @ normal.reshape(-1, 3)
     masses = areas * areal_mass
+    has_stack = mesh.stack >= 0
+    stack_area: Floats = np.bincount(
+        mesh.stack[has_stack], weights=areas[has_stack], minlength=len(mesh.stacks)
+    ).astype(float)
     total = float(masses.sum())
     centre = first / total if total > 0 else np.zeros(3)
     return MassProperties(
@@ -154,7 +162,8 @@ def mass_properties(mesh: ShellMesh) -> MassProperties:
         inertia_centre=_inertia(second - total * np.outer(centre, centre)),
         region_area=_by_region(mesh, areas),
         region_mass=_by_region(mesh, masses),
-        material_mass=_by_material(mesh, areas),
+        material_mass=_by_material(mesh, stack_area),
+        stack_area=stack_area,
     )
 
 
@@ -249,7 +258,7 @@ def _gauss_rule(n_sides: int) -> tuple[Floats, Floats]:
 
 def _inertia(second: Floats) -> Floats:
     """Inertia tensor from the second moments ∫ x xᵀ dm."""
-    inertia: Floats = np.trace(second) * np.eye(3) - second
+    inertia: Floats = np.trace(second) * np.eye(3) - (second + second.T) / 2
     return inertia
 
 
@@ -258,9 +267,7 @@ def _by_region(mesh: ShellMesh, values: Floats) -> dict[str, float]:
     return {region.name: float(total) for region, total in zip(mesh.regions, sums, strict=True)}
 
 
-def _by_material(mesh: ShellMesh, areas: Floats) -> dict[str, float]:
-    has_stack = mesh.stack >= 0
-    stack_area = np.bincount(mesh.stack[has_stack], weights=areas[has_stack], minlength=len(mesh.stacks))
+def _by_material(mesh: ShellMesh, stack_area: Floats) -> dict[str, float]:
     table = tabulate_layers(mesh.stacks)
     layer_mass = stack_area[table.stack] * table.thickness * table.density
     sums = np.bincount(table.material, weights=layer_mass, minlength=len(table.materials))

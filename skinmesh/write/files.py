@@ -1,0 +1,98 @@
+"""All files of a mesh at once."""
+
+from __future__ import annotations
+
+import importlib
+import pkgutil
+from collections.abc import Iterable
+from dataclasses import dataclass
+from difflib import get_close_matches
+from os import PathLike
+from pathlib import Path
+
+from skinmesh.errors import InputError, OutputError, Problem
+from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.write.placing import new_files
+from skinmesh.write.registry import FORMATS
+from skinmesh.write.tables import TABLES
+
+for _module in pkgutil.iter_modules([str(Path(__file__).parent / "formats")]):
+    importlib.import_module(f"skinmesh.write.formats.{_module.name}")
+
+DEFAULT_FORMATS = ("vtu", "msh", "inp", "bdf")
+
+
+@dataclass(frozen=True)
+class WrittenFile:
+    """A file that was written.
+
+    Attributes
+    ----------
+    name : str
+        Without its directory.
+    size : int, bytes
+    """
+
+    name: str
+    size: int
+
+
+def write(
+    mesh: ShellMesh, directory: str | PathLike[str], *, formats: Iterable[str] = DEFAULT_FORMATS
+) -> tuple[WrittenFile, ...]:
+    """Write a mesh in the wanted formats, with its table of stacks and its summary.
+
+    The files are named after the mesh: ``stem.vtu``, ``stem.stacks.csv``, ``stem.summary.json``. All are written, or
+    none: a call that fails leaves the directory as it was. Files of an earlier build of the same stem are replaced, and
+    **removed where their format is not asked for now**, for they would show another mesh. Files that are not ours stay.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+    directory : path
+        Made where it is missing.
+    formats : iterable of str
+        Names from ``skinmesh.write.registry.FORMATS``.
+
+    Returns
+    -------
+    tuple of WrittenFile
+        The formats in the order asked for, then the tables.
+
+    Raises
+    ------
+    InputError
+        There is no such format.
+    MeshError
+        The mesh kernel failed on the MSH file.
+    OutputError
+        The directory or a file in it cannot be written.
+    """
+    wanted = _known_formats(formats)
+    directory = Path(directory)
+    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES)}
+    try:
+        with new_files(directory, is_own=own.__contains__) as stage:
+            paths = [stage / f"{mesh.stem}.{name}" for name in wanted]
+            for name, path in zip(wanted, paths, strict=True):
+                FORMATS[name].write(mesh, path)
+            for ending, table in TABLES.items():
+                paths.append(stage / f"{mesh.stem}.{ending}")
+                paths[-1].write_text(table(mesh), encoding="utf-8", newline="\n")
+            written = tuple(WrittenFile(path.name, path.stat().st_size) for path in paths)
+    except OSError as error:
+        raise OutputError(f"cannot write into {directory}: {error.strerror or error}") from error
+    return written
+
+
+def _known_formats(formats: Iterable[str]) -> tuple[str, ...]:
+    wanted = tuple(dict.fromkeys(formats))
+    problems = []
+    for name in wanted:
+        if name not in FORMATS:
+            near = get_close_matches(name, FORMATS, n=1)
+            hint = f" — did you mean '{near[0]}'?" if near else ""
+            problems.append(Problem("formats", 0, "", f"no format '{name}'; known: {', '.join(sorted(FORMATS))}{hint}"))
+    if problems:
+        raise InputError(problems)
+    return wanted
