@@ -31,7 +31,7 @@ STACK_COLUMNS = (
 )
 _DIGITS = 12
 """Significant digits of a number in the summary; enough for every use, and free of the noise of sums."""
-_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
+_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\n")
 
 
 def stacks_table(mesh: ShellMesh) -> str:
@@ -203,6 +203,8 @@ def _rounded(listed: list[Any]) -> list[Any]:
 
 def _as_text(name: str) -> str:
     """A name that no spreadsheet takes for a formula."""
+    # Readers of CSV refuse a lone carriage return.
+    name = name.replace("\r\n", "\n").replace("\r", "\n")
     return f"'{name}" if name.startswith(_FORMULA_STARTS) else name
 
 
