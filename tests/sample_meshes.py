@@ -6,6 +6,7 @@ The shapes have closed forms: a tube or cone about z, and a rectangular tube wit
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from math import radians
 
 import numpy as np
@@ -48,6 +49,7 @@ BALSA = Material(
     source="invented",
 )
 REGIONS = (Region("suction panel", 1, "panel"), Region("pressure panel", -1, "panel"), Region("fore web", 0, "web"))
+HOSTILE = ('Gürtel "außen"', "<script>alert('x')</script>", "=1+2 & more;")
 SOURCES = (Source("sample.yaml", "0" * 64), Source("sample.csv", "1" * 64))
 
 
@@ -189,6 +191,18 @@ def box_with_web(
         length=length,
         n_bands=1,
         foot_sets={"fore web suction foot": skin[:, suction_foot], "fore web pressure foot": skin[:, pressure_foot]},
+    )
+
+
+def numbered_box(order: int = 2, shape: str = "quad") -> ShellMesh:
+    """A box whose node and element numbers are none that a reader would make up, with hostile names."""
+    mesh = box_with_web(layers=sandwich(), web_layers=sandwich()[:2], order=order, shape=shape)
+    return replace(
+        mesh,
+        title=HOSTILE[1],
+        regions=tuple(replace(region, name=name) for region, name in zip(mesh.regions, HOSTILE, strict=True)),
+        node_number=3 * mesh.node_number + 100,
+        element_number=2 * mesh.element_number[::-1] + 5,
     )
 
 

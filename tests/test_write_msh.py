@@ -13,8 +13,7 @@ import meshio
 import numpy as np
 import pytest
 from numpy.testing import assert_array_equal
-from sample_meshes import box_with_web, sandwich, tube
-from test_write_vtu import numbered_box
+from sample_meshes import box_with_web, numbered_box, sandwich, tube
 
 from skinmesh.errors import OutputError
 from skinmesh.mesh.kernel import gmsh_session

@@ -10,25 +10,12 @@ import numpy as np
 import pytest
 import pyvista
 from numpy.testing import assert_array_equal
-from sample_meshes import box_with_web, sandwich, tube
+from sample_meshes import numbered_box, tube
 
 from skinmesh.mesh.shellmesh import Region, ShellMesh
 from skinmesh.write.formats.vtu import write_vtu
 
-HOSTILE = ('Gürtel "außen"', "<script>alert('x')</script>", "=1+2 & more;")
 VTK_TYPE = {("quad", 1): 9, ("quad", 2): 23, ("triangle", 1): 5, ("triangle", 2): 22}
-
-
-def numbered_box(order: int = 2, shape: str = "quad") -> ShellMesh:
-    """A box whose node and element numbers are none that a reader would make up, with hostile names."""
-    mesh = box_with_web(layers=sandwich(), web_layers=sandwich()[:2], order=order, shape=shape)
-    return replace(
-        mesh,
-        title=HOSTILE[1],
-        regions=tuple(replace(region, name=name) for region, name in zip(mesh.regions, HOSTILE, strict=True)),
-        node_number=3 * mesh.node_number + 100,
-        element_number=2 * mesh.element_number[::-1] + 5,
-    )
 
 
 def expected_cell_arrays(mesh: ShellMesh) -> dict[str, np.ndarray]:
