@@ -24,7 +24,9 @@ needs_ccx = pytest.mark.skipif(shutil.which("ccx") is None, reason="CalculiX (cc
 STEEL = Material("steel", 210e9, 210e9, 210e9, 0.3, 0.3, 0.3, *[210e9 / 2.6] * 3, 7850.0, True, "handbook values")
 
 
-def twisted_tube(n_around: int, n_along: int, *, layers: tuple[Layer, ...], order: int = 2, shape: str = "quad", **more):
+def twisted_tube(
+    n_around: int, n_along: int, *, layers: tuple[Layer, ...], order: int = 2, shape: str = "quad", **more
+):
     """An elliptic, tapered, twisted tube: no element is flat and none faces along an axis."""
     length = 10.0
     mesh = tube(n_around, n_along, radius=1.0, length=length, layers=layers, order=order, shape=shape, **more)
@@ -184,7 +186,7 @@ def tube_strain_and_twist(mesh: ShellMesh, folder: Path, *, radius: float, axial
 
 
 def reduced_stiffness(layer: Layer) -> NDArray:
-    """(3, 3) plane-stress stiffness of a layer in element axes (Jones, Mechanics of Composite Materials, from memory)."""
+    """(3, 3) plane stress in element axes (Jones, Mechanics of Composite Materials, from memory)."""
     material = layer.material
     nu21 = material.nu12 * material.E2 / material.E1
     share = 1.0 - material.nu12 * nu21

@@ -172,7 +172,9 @@ def node_normals(mesh: ShellMesh) -> NodeNormals:
         n_groups += int(visit[-1]) + 1
         pending = pending[~joins]
 
-    sums = np.column_stack([np.bincount(group, weights=normal[:, axis], minlength=n_groups) for axis in range(3)])
+    sums = np.zeros((n_groups, 3))
+    for axis in range(3):
+        sums[:, axis] = np.bincount(group, weights=normal[:, axis], minlength=n_groups)
     owner = np.zeros(n_groups, dtype=np.int64)
     owner[group] = node
     in_cells = np.empty(m * k, dtype=np.int64)
@@ -184,10 +186,10 @@ def inner_face_ratio(mesh: ShellMesh) -> Floats:
     """How much of its area the laminate keeps at its worst place inside each element.
 
     The position of a place in the laminate is Y = x + (z − offset·t) n, with x on the reference surface and n the
-    interpolated mean normals of the nodes. The ratio is the least value over the integration points, 2 × 2 (3 in a
-    triangle) and two levels in each merged layer (three in a triangle of one layer), of det[Y_ξ, Y_η, n] there over the same on the reference surface.
-    It is 1 − depth / R on a smooth arc of radius R, and at 0 or below a solver refuses the element. Found by
-    experiment with CalculiX 2.20: the solver stops where the least ratio is not positive.
+    interpolated mean normals of the nodes. The ratio is the least value of det[Y_ξ, Y_η, n] there over the same on the
+    reference surface, at the integration points: 2 × 2 (3 in a triangle) and two levels in each merged layer (three
+    in a triangle of one layer). It is 1 − depth / R on a smooth arc of radius R, and at 0 or below a solver refuses
+    the element. Found by experiment with CalculiX 2.20, which stops where the least ratio is not positive.
 
     Parameters
     ----------

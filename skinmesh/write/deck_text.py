@@ -165,7 +165,10 @@ def element_groups(mesh: ShellMesh) -> dict[str, NDArray[np.int64]]:
         Element indices by name; no set is empty.
     """
     webs = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
-    groups = {region.name: indices for region, indices in zip(mesh.regions, split_labels(mesh.region, len(mesh.regions)), strict=True)}
+    groups = {
+        region.name: indices
+        for region, indices in zip(mesh.regions, split_labels(mesh.region, len(mesh.regions)), strict=True)
+    }
     further = {
         "suction": np.flatnonzero(mesh.side > 0),
         "pressure": np.flatnonzero(mesh.side < 0),

@@ -3,7 +3,8 @@
 A solver that projects a given vector X' onto the element finds the ply direction. The blade's own axis z serves every
 0° ply at once. For an angled ply of direction d in an element with normal n every X' with X'·(n × d) = 0 is right, so
 one vector can serve many elements that face nearly the same way. It is the vector with the least sum of squares of
-that product, and its error is checked element by element: what errs too much is taken in smaller bunches, at last alone.
+that product, and its error is checked element by element: what errs too much is taken in smaller bunches, and in the
+end alone.
 """
 
 from __future__ import annotations

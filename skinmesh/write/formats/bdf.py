@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from pathlib import Path
+from textwrap import wrap
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,6 +30,7 @@ from skinmesh.write.registry import register_format
 GRAVITY = 9.81
 FIRST_NODE_SET = 1001
 FIRST_ELEMENT_SET = 2001
+_LINE = 72
 
 
 def write_bdf(mesh: ShellMesh, path: Path) -> None:
@@ -94,13 +96,13 @@ def long_field(value: float) -> str:
     Examples
     --------
     >>> long_field(41.0e9), long_field(0.00085), long_field(1.0 / 3e6)
-    ('41000000000.0', '0.00085', '3.3333333333333-7')
+    ('41000000000.0', '0.00085', '3.333333333333-7')
     """
     return _nearest_text(value, 16)
 
 
 def _nearest_text(value: float, width: int) -> str:
-    """The nearest of all ways to write a value in a field; a plain one before one with an exponent, then the shortest."""
+    """The nearest of all ways to write a value in a field; a plain one before one with an exponent, then the short."""
     candidates = []
     for digits in range(1, width):
         plain = f"{value:.{digits}f}"
@@ -146,13 +148,14 @@ def _notes(mesh: ShellMesh) -> list[str]:
         notes += [
             "The blade file has no plies: no properties and no materials.",
             "The property number of an element is the number of its region.",
-            *(f"region {k + 1}: {ascii_text(region.name)}"[:70] for k, region in enumerate(mesh.regions)),
+            *(f"region {k + 1}: {ascii_text(region.name)}" for k, region in enumerate(mesh.regions)),
         ]
     else:
         notes += [
-            "Layers of a PCOMP run from the negative-normal face upwards;",
-            "neighbours of one material and angle are merged.",
-            "THETA: from side G1-G2 about the normal. ZOFFS: laminate's middle.",
+            "Layers of a PCOMP run from the negative-normal face upwards; neighbours of one material and angle "
+            "are merged.",
+            "THETA turns side G1-G2, laid into the plane of the corners, about the element's normal into the 0-degree "
+            "direction. ZOFFS is the height of the laminate's middle over the nodes.",
         ]
         if n_bare:
             notes.append(f"{n_bare} elements carry no ply: property {len(mesh.stacks) + 1}, not defined here.")
@@ -160,7 +163,7 @@ def _notes(mesh: ShellMesh) -> list[str]:
 
 
 def _case(mesh: ShellMesh) -> Iterator[str]:
-    yield "".join(f"$ {note}\n" for note in _notes(mesh))
+    yield "".join(f"$ {line}\n" for note in _notes(mesh) for line in wrap(note, _LINE - 2))
     yield f"SOL 101\nCEND\nTITLE = {ascii_text(mesh.title)[:60] or 'BLADE'}\nECHO = NONE\n"
     node_names, element_names = set_names(mesh)
     sets = [("node", name, node_names[name], mesh.node_number[mesh.node_set(name)]) for name in mesh.node_sets]

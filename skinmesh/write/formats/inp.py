@@ -189,17 +189,25 @@ def _heading(mesh: ShellMesh, layers: list[tuple[Layer, ...]]) -> Iterator[str]:
         *CAUTION,
     ]
     if mesh.order == 1:
-        notes.append("Order 1 was asked for; mid nodes were added on the surface: only second-order shells take layers.")
+        notes.append(
+            "Order 1 was asked for; mid nodes were added on the surface: only second-order shells take layers."
+        )
     if layers:
         notes += [
             "Layers of a section are listed from the negative-normal face to the outward face. Neighbouring layers of",
             "one material and angle are merged. OFFSET=0.5 puts the nodes on the outward face of the laminate.",
             "Transverse shear of soft cores is stiffer in this solver than core-shear theory has it.",
         ]
+    if layers and mesh.n_sides == 3:
+        notes.append(
+            "This solver prints a mass (EMAS) of zero for layered triangles, though it gives them their weight."
+        )
     if not mesh.stacks:
         notes.append("The blade file has no plies: elements and sets only, without sections, material or step.")
     elif n_bare:
-        notes.append(f"{n_bare} elements carry no ply: they have no section, and the deck has no step. Set WITHOUT_PLIES.")
+        notes.append(
+            f"{n_bare} elements carry no ply: they have no section, and the deck has no step. Set WITHOUT_PLIES."
+        )
     yield f"*HEADING\n{ascii_text(mesh.title)[:70]}\n"
     yield "".join(f"** {note}\n" for note in notes)
 
@@ -209,7 +217,9 @@ def _nodes_and_elements(mesh: ShellMesh) -> Iterator[str]:
     yield from rows_text("%d,%.14g,%.14g,%.14g\n", [mesh.node_number, *exact(mesh.points).T])
     n_nodes = mesh.cells.shape[1]
     yield f"*ELEMENT,TYPE={'S8R' if n_nodes == 8 else 'S6'},ELSET=ALL\n"
-    yield from rows_text(",".join(["%d"] * (n_nodes + 1)) + "\n", [mesh.element_number, *mesh.node_number[mesh.cells].T])
+    yield from rows_text(
+        ",".join(["%d"] * (n_nodes + 1)) + "\n", [mesh.element_number, *mesh.node_number[mesh.cells].T]
+    )
 
 
 def _sets(mesh: ShellMesh) -> Iterator[str]:
@@ -297,8 +307,8 @@ def _orientation_name(section: Section, angle: float) -> str:
 def _weight_step(mesh: ShellMesh) -> Iterator[str]:
     node_names, _ = set_names(mesh)
     yield (
-        "**\n** The blade's weight, flapwise. Printed: mass (EMAS), reactions at the root, and where there is a tip, its\n"
-        "** displacements. Loads on clamped nodes are left out of the reactions.\n"
+        "**\n** The blade's weight, flapwise. Printed: mass (EMAS), reactions at the root, displacements of the tip.\n"
+        "** Loads on clamped nodes are left out of the reactions.\n"
         f"*STEP\n*STATIC\n*DLOAD\nALL,GRAV,{GRAVITY},-1.,0.,0.\n"
         f"*NODE PRINT,NSET={node_names['root']},TOTALS=ONLY\nRF\n"
         "*EL PRINT,ELSET=ALL,TOTALS=ONLY\nEMAS\n"
