@@ -171,7 +171,7 @@ def test_nastran95_on_an_isotropic_tube(tmp_path, share, offset):
     mesh = replace(mesh, offset=np.full(len(mesh.cells), offset))
     perimeter = 2 * n * radius * sin(pi / n)
     strain, _ = strain_and_twist(mesh, tmp_path / "pull", axial=1e4, tangential=0.0)
-    assert strain == pytest.approx(1e4 / (STEEL.E1 * perimeter * thickness), rel=0.005)
+    assert strain == pytest.approx(1e4 / (STEEL.E1 * perimeter * thickness), rel=0.01)
     if offset == 0.0:
         _, turn = strain_and_twist(mesh, tmp_path / "turn", axial=0.0, tangential=1e4)
         enclosed = n / 2 * radius**2 * sin(2 * pi / n)
