@@ -52,15 +52,17 @@ def round_levels(low: float, high: float, *, whole: bool = False) -> Floats:
     >>> round_levels(3, 5, whole=True).tolist()
     [3.0, 4.0, 5.0, 6.0]
     """
-    span = max(high - low, 1e-9 * max(abs(high), 1.0))
+    # A whole number stands for itself and all up to the next one.
+    high = high + 1.0 if whole else high
+    span = max(high - low, 1e-6 * abs(high), 1e-9)
     power = 10.0 ** np.floor(np.log10(span / N_STEPS))
     sizes = power * np.array([1.0, 2.0, 2.5, 5.0, 10.0, 20.0])
-    for size in sizes[(sizes >= 1.0) & (sizes == np.rint(sizes))] if whole else sizes:
+    for size in sizes[sizes == np.rint(sizes)] if whole else sizes:
         first = np.floor(low / size + 1e-9)
-        last = max(np.ceil(high / size - 1e-9) + whole * (np.ceil(high / size) == high / size), first + 1.0)
+        last = max(np.ceil(high / size - 1e-9), first + 1.0)
         if last - first <= N_STEPS:
-            return np.asarray(np.round(np.arange(first, last + 1) * size, 12))
-    return np.array([low, high + span])
+            break
+    return np.asarray(np.round(np.arange(first, last + 1.0) * size, 12))
 
 
 def paint_regions(mesh: ShellMesh) -> Paint:
@@ -98,6 +100,7 @@ PAINTS: Mapping[str, Callable[[ShellMesh], Paint]] = {
 
 
 def _paint_values(mesh: ShellMesh, values: Floats, title: str, *, whole: bool = False) -> Paint:
+    values = np.round(values, 9)
     covered = mesh.stack != NO_STACK
     if not covered.any():
         bare = np.broadcast_to(rgb([BARE]), (len(values), 3))

@@ -187,18 +187,20 @@ def render(
     right, up, out = camera.axes
     depth = float(np.ptp(points, axis=0).max())
     middle = (frame.left + 0.5 * frame.width) * right + (frame.bottom + 0.5 * frame.height) * up
-    # Lines are lifted towards the eye, so that the surface does not eat half of them.
-    strokes = [(_sides(corners), "#5a5a5a", 0.5, 1e-4)] if element_edges else []
+    strokes = [(_sides(corners), "#5a5a5a", 0.5, 1.0)] if element_edges else []
     if lines is not None and len(lines):
-        strokes.append((lines, line_colour, line_width, 2e-4))
+        strokes.append((lines, line_colour, line_width, 2.0))
     with quiet_plotter(OVERSAMPLING * width, OVERSAMPLING * height) as plotter:
         plotter.set_background("white")
         body = _poly_data(points, corners)
         body.cell_data["colour"] = colours
         plotter.add_mesh(body, scalars="colour", rgb=True, lighting=False, show_scalar_bar=False)
         for ends, colour, thick, lift in strokes:
-            wires = _poly_data(points + lift * depth * out, ends)
-            plotter.add_mesh(wires, color=colour, line_width=OVERSAMPLING * thick, lighting=False)
+            wires = _poly_data(points, ends)
+            actor = plotter.add_mesh(wires, color=colour, line_width=OVERSAMPLING * thick, lighting=False)
+            # Drawn nearer than it is, or the surface that it lies on would eat half of it.
+            actor.mapper.SetResolveCoincidentTopologyToPolygonOffset()
+            actor.mapper.SetRelativeCoincidentTopologyLineOffsetParameters(-1.0, -8.0 * lift)
         plotter.camera.parallel_projection = True
         plotter.camera.focal_point = tuple(middle)
         plotter.camera.position = tuple(middle + 10.0 * depth * out)
