@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cmp_to_key
+from functools import cmp_to_key, reduce
 
 import numpy as np
 from numpy.typing import NDArray
@@ -76,7 +76,7 @@ class SeamTable:
 
 
 def place_seams(
-    layout: Layout, ruler: Ruler, *, least_spacing: Floats | None, file: str
+    layout: Layout, ruler: Ruler, *, least_spacing: Floats | None, file: str, order: tuple[str, ...] = ()
 ) -> tuple[SeamTable, tuple[str, ...]]:
     """Place every seam at the ruler's sections.
 
@@ -88,6 +88,9 @@ def place_seams(
         Least distance of two seams, None for one hundredth of the side's arc length.
     file : str
         Blade file, for messages.
+    order : tuple of str
+        Labels of the seams as found at other sections of the same blade; without them the seams are put in the order
+        of their mean places.
 
     Returns
     -------
@@ -104,7 +107,8 @@ def place_seams(
     problems: list[Problem] = []
     tables = {}
     for side in (PRESSURE, SUCTION):
-        seams = _order(_collect(layout, ruler, side, problems, file), ruler.z)
+        found = _collect(layout, ruler, side, problems, file)
+        seams = _in_order(found, order, SIDE_NAMES[side]) if order else _order(found, ruler.z)
         spacing = LEAST_SPACING * ruler.length(side) if least_spacing is None else least_spacing
         tables[side] = (seams, _spread(seams, ruler, side, spacing, warnings, problems, file))
     if problems:
@@ -190,12 +194,28 @@ def _order(seams: list[SideSeam], z: Floats) -> list[SideSeam]:
     ordered: list[SideSeam] = []
     for seam in sorted(seams, key=cmp_to_key(lambda a, b: float(np.sign(difference(a, b))))):  # type: ignore[arg-type,return-value]
         if ordered and difference(ordered[-1], seam) == 0.0:
-            twin = ordered.pop()
-            leader = twin if twin.is_edge or not seam.is_edge else seam
-            span = (min(twin.span[0], seam.span[0]), max(twin.span[1], seam.span[1]))
-            seam = SideSeam(twin.labels + seam.labels, leader.arc, twin.is_edge or seam.is_edge, span)
+            seam = _joined(ordered.pop(), seam)
         ordered.append(seam)
     return ordered
+
+
+def _in_order(seams: list[SideSeam], order: tuple[str, ...], side_name: str) -> list[SideSeam]:
+    """Sort and join the seams as labels say that were found before."""
+    by_label = {f"{side_name} {seam.labels[0]}": seam for seam in seams}
+    ordered = []
+    for labels in order if side_name == SIDE_NAMES[SUCTION] else order[::-1]:
+        parts = labels.removeprefix(f"{side_name} ").split(" + ")
+        own = [by_label[f"{side_name} {part}"] for part in parts if f"{side_name} {part}" in by_label]
+        if labels.startswith(side_name) and own:
+            ordered.append(reduce(_joined, own))
+    return ordered
+
+
+def _joined(first: SideSeam, second: SideSeam) -> SideSeam:
+    """One seam of two that coincide; an edge leads a foot."""
+    leader = first if first.is_edge or not second.is_edge else second
+    span = (min(first.span[0], second.span[0]), max(first.span[1], second.span[1]))
+    return SideSeam(first.labels + second.labels, leader.arc, first.is_edge or second.is_edge, span)
 
 
 def _spread(

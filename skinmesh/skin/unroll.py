@@ -59,7 +59,11 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
             [Problem(file, 0, "mesh.size", f"would make {n_elements / 1e6:.1f} million elements; take a larger size")]
         )
     seams, seam_warnings = place_seams(
-        blade.layout, measure_sections(surface, levels.z), least_spacing=_spacing(blade, levels.z), file=file
+        blade.layout,
+        measure_sections(surface, levels.z),
+        least_spacing=_spacing(blade, levels.z),
+        file=file,
+        order=coarse.labels,
     )
     webs = _webs(blade, surface, rows, levels.z, seams)
     closes = any(base.root_apex or base.tip_apex for base in bases)
