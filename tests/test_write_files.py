@@ -107,6 +107,26 @@ def test_files_of_formats_not_asked_for_now_are_removed_and_others_stay(tmp_path
     assert not (out / "sample.msh").exists()
 
 
+def test_extras_come_with_the_mesh_and_old_ones_go_with_it(tmp_path: Path) -> None:
+    def note(mesh: ShellMesh, path: Path) -> None:
+        path.write_text(mesh.title)
+
+    written = write(box(), tmp_path / "out", formats=[], extras={"note.txt": note, "other.txt": None})
+    assert [file.name for file in written] == [*TABLES, "sample.note.txt"]
+    assert (tmp_path / "out" / "sample.note.txt").read_text() == "Sample box"
+    write(box(), tmp_path / "out", formats=[], extras={"note.txt": None})
+    assert sorted(contents(tmp_path / "out")) == sorted(TABLES)
+
+
+def test_a_failing_extra_changes_nothing(tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    write(tube(8, 2), out)
+    before = contents(tmp_path)
+    with pytest.raises(RuntimeError, match="bug"):
+        write(box(), out, extras={"note.txt": failing_format(RuntimeError("bug")).write})
+    assert contents(tmp_path) == before
+
+
 @pytest.mark.parametrize("error", [OSError(28, "No space left on device"), RuntimeError("bug"), KeyboardInterrupt()])
 @pytest.mark.parametrize("earlier", [False, True])
 def test_a_failing_writer_changes_nothing(

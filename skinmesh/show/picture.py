@@ -60,24 +60,6 @@ def require_pictures() -> None:
         pass
 
 
-def draw_pictures(mesh: ShellMesh, directory: Path) -> tuple[Path, ...]:
-    """Write one picture of each subject: ``stem.regions.png``, ``stem.stacks.png``, …
-
-    Parameters
-    ----------
-    mesh : ShellMesh
-    directory : Path
-
-    Returns
-    -------
-    tuple of Path
-    """
-    paths = tuple(directory / f"{mesh.stem}.{word}.png" for word in SUBJECTS.values())
-    for path, by in zip(paths, SUBJECTS, strict=True):
-        picture(mesh, path, by=by)
-    return paths
-
-
 def picture(mesh: ShellMesh, path: Path, *, by: str = "region") -> None:
     """Draw a mesh and write the picture as PNG, 1600 pixels wide.
 

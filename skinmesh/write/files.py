@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import importlib
 import pkgutil
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from difflib import get_close_matches
 from os import PathLike
@@ -13,7 +13,7 @@ from pathlib import Path
 from skinmesh.errors import InputError, OutputError, Problem
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.placing import new_files
-from skinmesh.write.registry import FORMATS
+from skinmesh.write.registry import FORMATS, Writer
 from skinmesh.write.tables import TABLES
 
 for _module in pkgutil.iter_modules([str(Path(__file__).parent / "formats")]):
@@ -38,7 +38,11 @@ class WrittenFile:
 
 
 def write(
-    mesh: ShellMesh, directory: str | PathLike[str], *, formats: Iterable[str] = DEFAULT_FORMATS
+    mesh: ShellMesh,
+    directory: str | PathLike[str],
+    *,
+    formats: Iterable[str] = DEFAULT_FORMATS,
+    extras: Mapping[str, Writer | None] | None = None,
 ) -> tuple[WrittenFile, ...]:
     """Write a mesh in the wanted formats, with its table of stacks and its summary.
 
@@ -53,11 +57,14 @@ def write(
         Made where it is missing.
     formats : iterable of str
         Names from ``skinmesh.write.registry.FORMATS``.
+    extras : mapping of str to callable or None
+        Further files that belong to the mesh, such as pictures: ending of the file's name, and what writes it. None
+        where it is not wanted this time; an old one is then removed like that of a format.
 
     Returns
     -------
     tuple of WrittenFile
-        The formats in the order asked for, then the tables.
+        The formats in the order asked for, the tables, the extras.
 
     Raises
     ------
@@ -70,7 +77,8 @@ def write(
     """
     wanted = _known_formats(formats)
     directory = Path(directory)
-    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES)}
+    extras = extras or {}
+    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, *extras)}
     try:
         with new_files(directory, is_own=own.__contains__) as stage:
             paths = [stage / f"{mesh.stem}.{name}" for name in wanted]
@@ -79,6 +87,10 @@ def write(
             for ending, table in TABLES.items():
                 paths.append(stage / f"{mesh.stem}.{ending}")
                 paths[-1].write_text(table(mesh), encoding="utf-8", newline="\n")
+            for ending, write_extra in extras.items():
+                if write_extra is not None:
+                    paths.append(stage / f"{mesh.stem}.{ending}")
+                    write_extra(mesh, paths[-1])
             written = tuple(WrittenFile(path.name, path.stat().st_size) for path in paths)
     except OSError as error:
         raise OutputError(f"cannot write into {directory}: {error.strerror or error}") from error
