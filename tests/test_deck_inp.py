@@ -7,7 +7,7 @@ from math import radians
 
 import numpy as np
 import pytest
-from sample_meshes import BALSA, GLASS_UD, box_with_web, sandwich, tube
+from sample_meshes import BALSA, GLASS_UD, box_with_web, numbered_box, sandwich, tube
 from solver_runs import needs_ccx, read_keyword_deck, run_solver, solve_deck, twisted_tube
 
 from skinmesh.laminate.stack import Layer, Stack
@@ -144,6 +144,22 @@ def test_section_cards_cover_each_layered_element_once():
     sections = plan_sections(mesh, share_directions(mesh, deck_layers(mesh)))
     assert sorted(np.concatenate([section.elements for section in sections])) == list(range(len(mesh.cells)))
     assert all(np.all(mesh.stack[section.elements] == section.stack) for section in sections)
+
+
+@pytest.mark.solver
+@needs_ccx
+def test_hostile_names_and_strange_numbers_run(tmp_path):
+    mesh = numbered_box()
+    run = run_solver(mesh, tmp_path)
+    assert "WARNING" not in run.log.upper()
+    assert "ERROR" not in run.log.upper()
+    assert run.mass == pytest.approx(
+        3.0 * (2.4 * mesh.stacks[0].areal_mass + 0.4 * mesh.stacks[1].areal_mass), rel=1e-5
+    )
+    deck = read_keyword_deck((tmp_path / "deck.inp").read_text(encoding="ascii"))
+    assert [set(deck.element_sets[name]) for name in ("GURTEL_AUSSEN", "SCRIPT_ALERT_X_SCRIPT", "N_1_2_MORE")] == [
+        set(mesh.element_number[mesh.region == k].tolist()) for k in range(3)
+    ]
 
 
 def many_layers(n_layers: int) -> tuple[Layer, ...]:

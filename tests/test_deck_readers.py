@@ -16,7 +16,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from sample_meshes import GLASS_UD, box_with_web, sandwich, tube
+from sample_meshes import GLASS_UD, box_with_web, numbered_box, sandwich, tube
 from solver_runs import STEEL, ring_of, thin_tube_stiffness, twisted_tube
 
 from skinmesh.laminate.stack import Layer
@@ -116,6 +116,20 @@ def test_pynastran_finds_the_mesh_in_the_file(tmp_path, kind, shape, order):
     flat_mesh = mesh if order == 1 else twisted_tube(32, 60, layers=sandwich(), shape=shape, order=1, n_bands=3)
     flat_mesh = mesh if kind == "box" else flat_mesh
     assert found["mass"] == pytest.approx(np.sum(element_areas(flat_mesh) * flat_mesh.areal_mass), rel=1e-3)
+
+
+@needs_pynastran
+def test_pynastran_takes_hostile_names_and_strange_numbers(tmp_path):
+    mesh = numbered_box(order=1)
+    path = tmp_path / "deck.bdf"
+    write_bdf(mesh, path)
+    found = asked(PYNASTRAN, READ, path)
+    by_number = np.argsort(mesh.element_number)
+    assert np.array_equal(found["connectivity"], mesh.node_number[mesh.connectivity[by_number]])
+    assert found["thickness"] == pytest.approx(mesh.thickness[by_number])
+    flat_mass = 3.0 * (2.4 * mesh.stacks[0].areal_mass + 0.4 * mesh.stacks[1].areal_mass)
+    assert found["mass"] == pytest.approx(flat_mass, rel=1e-9)
+    assert found["e1"] == pytest.approx(mesh.e1[by_number], abs=1e-4)
 
 
 def solved_by_nastran95(mesh: ShellMesh, folder: Path, forces: list[str]) -> dict[int, list[float]]:
