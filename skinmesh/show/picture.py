@@ -135,6 +135,11 @@ class _Scene:
         """(n, 3) float array, m: the corner nodes."""
         return self.mesh.points[: self.mesh.n_corners]
 
+    @property
+    def on_skin(self) -> NDArray[np.bool_]:
+        """(m,) bool array: elements that are no web, and so are not hidden by others."""
+        return np.array([region.kind != "web" for region in self.mesh.regions])[self.mesh.region]
+
 
 def _scene(mesh: ShellMesh, paint: Paint) -> _Scene:
     corners = mesh.cells[:, : mesh.n_sides]
@@ -261,8 +266,7 @@ def _sections(page: Page, scene: _Scene, top: float) -> None:
 def _arrows(axes: Any, scene: _Scene, camera: Camera, frame: Frame, *, scale: float) -> None:
     """One arrow of e1 in every so many pixels of a view."""
     onto_page = camera.axes[:2].T
-    skin = np.array([region.kind != "web" for region in scene.mesh.regions])[scene.mesh.region]
-    seen = np.flatnonzero((scene.mesh.e3 @ camera.axes[2] > 0.25) & skin)
+    seen = np.flatnonzero((scene.mesh.e3 @ camera.axes[2] > 0.25) & scene.on_skin)
     square = np.floor((scene.middle[seen] @ onto_page - [frame.left, frame.bottom]) * scale / [56.0, 26.0])
     seen = seen[np.unique(square, axis=0, return_index=True)[1]]
     _quiver(axes, scene.middle[seen] @ onto_page, scene.mesh.e1[seen] @ onto_page * 40.0 / scale, colour=INK)
@@ -306,6 +310,6 @@ def _close_up(page: Page, scene: _Scene, top: float) -> None:
         x += 20 + page.width_of(page.text(x, top + 12, name, colour=colour, weight="bold"))
     axes = _view(page, scene, camera, frame, place=(MARGIN, top + 40), scale=scale, element_edges=True)
     flat = scene.middle @ camera.axes[:2].T
-    seen = np.flatnonzero(frame.holds(flat) & (mesh.e3 @ camera.axes[2] > 0.2))
+    seen = np.flatnonzero(frame.holds(flat) & (mesh.e3 @ camera.axes[2] > 0.2) & scene.on_skin)
     for axis, colour in zip((mesh.e1, mesh.e2, mesh.e3), AXIS_COLOURS, strict=True):
         _quiver(axes, flat[seen], 0.6 * size * axis[seen] @ camera.axes[:2].T, colour=colour, width=2.2)
