@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
@@ -12,8 +13,9 @@ import pyvista
 from numpy.testing import assert_array_equal
 from sample_meshes import numbered_box, tube
 
+from skinmesh.errors import InputError
 from skinmesh.mesh.shellmesh import Region, ShellMesh
-from skinmesh.write.formats.vtu import write_vtu
+from skinmesh.write.formats.vtu import read_vtu, write_vtu
 
 VTK_TYPE = {("quad", 1): 9, ("quad", 2): 23, ("triangle", 1): 5, ("triangle", 2): 22}
 
@@ -30,6 +32,7 @@ def expected_cell_arrays(mesh: ShellMesh) -> dict[str, np.ndarray]:
         "e2": mesh.e2,
         "e3": mesh.e3,
         "element": mesh.element_number,
+        "offset": mesh.offset,
     }
 
 
@@ -110,3 +113,29 @@ def test_the_same_mesh_gives_the_same_bytes(tmp_path: Path) -> None:
     for name in ("a.vtu", "b.vtu"):
         write_vtu(numbered_box(), tmp_path / name)
     assert (tmp_path / "a.vtu").read_bytes() == (tmp_path / "b.vtu").read_bytes()
+
+
+@pytest.mark.parametrize(("shape", "order"), VTK_TYPE)
+def test_our_own_reader_finds_everything(tmp_path: Path, shape: str, order: int) -> None:
+    mesh = numbered_box(order, shape)
+    write_vtu(mesh, tmp_path / "box.vtu")
+    found = read_vtu(tmp_path / "box.vtu")
+    assert_array_equal(found.points, mesh.nodes)
+    assert_array_equal(found.cells, mesh.connectivity)
+    for arrays, expected in (
+        (found.cell_arrays, expected_cell_arrays(mesh)),
+        (found.point_arrays, expected_point_arrays(mesh)),
+        (found.names, expected_field_data(mesh)),
+    ):
+        assert set(arrays) == set(expected)
+        for name, array in expected.items():
+            assert_array_equal(arrays[name], array, err_msg=name)
+
+
+@pytest.mark.parametrize("spoil", [lambda data: data[: len(data) // 2], lambda data: data[:0], lambda data: data[500:]])
+def test_a_spoiled_file_is_an_input_error(tmp_path: Path, spoil: Callable[[bytes], bytes]) -> None:
+    path = tmp_path / "box.vtu"
+    write_vtu(numbered_box(), path)
+    path.write_bytes(spoil(path.read_bytes()))
+    with pytest.raises(InputError, match=r"box\.vtu: 1 problem\n  cannot be read as VTU"):
+        read_vtu(path)

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.laminate.code import LaminateCodes, laminate_codes
+from skinmesh.laminate.material import Material
 from skinmesh.mesh.measure import mass_properties, solid_mass
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.deck_text import CAUTION
@@ -124,7 +125,10 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "regions": _regions(mesh, mass.region_area, mass.region_mass),
         "stacks": _stacks(mesh, written, mass.stack_area),
         "laminate_code_letters": dict(written.legend),
-        "materials": [{"name": name, "mass_kg": _number(value)} for name, value in mass.material_mass.items()],
+        "materials": [
+            {"name": name, "mass_kg": _number(value), **_constants(mesh.materials[name])}
+            for name, value in mass.material_mass.items()
+        ],
         "node_sets": [{"name": name, "nodes": len(mesh.node_set(name))} for name in mesh.node_sets],
         "element_sets": [{"name": name, "elements": len(found)} for name, found in mesh.element_sets.items()],
         "rows": [{"row": k, "label": label, "z_m": _number(z)} for k, (label, z) in enumerate(report.rows)],
@@ -172,6 +176,18 @@ def _stacks(mesh: ShellMesh, written: LaminateCodes, area: NDArray[np.float64]) 
         }
         for k, stack in enumerate(mesh.stacks)
     ]
+
+
+def _constants(material: Material) -> dict[str, Any]:
+    elastic = ("E1", "E2", "E3", "G12", "G13", "G23")
+    ratios = ("nu12", "nu13", "nu23")
+    return {
+        **{f"{name}_Pa": getattr(material, name) for name in elastic},
+        **{name: getattr(material, name) for name in ratios},
+        "density_kg_m3": material.density,
+        "is_isotropic": material.is_isotropic,
+        "source": material.source,
+    }
 
 
 def _versions() -> dict[str, str]:

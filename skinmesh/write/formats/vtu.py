@@ -1,16 +1,23 @@
-"""VTU, compressed, for viewers and scripts: every quantity of the mesh as an array, and the names of the numbers."""
+"""VTU, compressed, for viewers and scripts: every quantity of the mesh as an array, and the names of the numbers.
+
+The one format that holds the whole mesh, and so the one that is read back.
+"""
 
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Iterator
+import zlib
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass
 from pathlib import Path
+from xml.etree.ElementTree import ParseError
 from xml.sax.saxutils import quoteattr
 
 import meshio
 import numpy as np
 from numpy.typing import NDArray
 
+from skinmesh.errors import InputError, Problem
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.registry import register_format
 
@@ -19,11 +26,69 @@ _NOT_XML = re.compile("[^\t\n\r\u0020-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]"
 _GRID = b"<UnstructuredGrid>"
 
 
+@dataclass(frozen=True, eq=False)
+class VtuContent:
+    """What a VTU file of ours holds, as it stands there.
+
+    Attributes
+    ----------
+    points : (n, 3) float array, m
+    cells : (m, k) int array
+        k = 3, 4, 6 or 8.
+    cell_arrays, point_arrays : mapping of str to array
+    names : mapping of str to int array
+        The field data.
+    """
+
+    points: NDArray[np.float64]
+    cells: NDArray[np.int64]
+    cell_arrays: Mapping[str, NDArray[np.generic]]
+    point_arrays: Mapping[str, NDArray[np.generic]]
+    names: Mapping[str, NDArray[np.int64]]
+
+
+def read_vtu(path: Path) -> VtuContent:
+    """Read a VTU file that :func:`write_vtu` wrote.
+
+    Parameters
+    ----------
+    path : Path
+
+    Returns
+    -------
+    VtuContent
+
+    Raises
+    ------
+    InputError
+        The file is not readable as VTU, or its cells are not of one kind of shell element.
+    OSError
+        The file cannot be opened.
+    """
+    try:
+        found = meshio.vtu.read(str(path))
+    except (meshio.ReadError, ParseError, zlib.error, ValueError, KeyError, IndexError, AssertionError) as error:
+        text = f"cannot be read as VTU ({str(error) or type(error).__name__}); build the mesh again"
+        raise InputError([Problem(path.name, 0, "", text)]) from error
+    kinds = [block.type for block in found.cells]
+    if len(kinds) != 1 or kinds[0] not in _CELL.values():
+        text = f"holds cells of the kinds {kinds}; wanted is one of {', '.join(_CELL.values())}"
+        raise InputError([Problem(path.name, 0, "", text)])
+    return VtuContent(
+        np.asarray(found.points, dtype=float),
+        np.asarray(found.cells[0].data, dtype=np.int64),
+        {name: np.asarray(blocks[0]) for name, blocks in found.cell_data.items()},
+        {name: np.asarray(values) for name, values in found.point_data.items()},
+        {name: np.atleast_1d(np.asarray(values)).astype(np.int64) for name, values in found.field_data.items()},
+    )
+
+
 def write_vtu(mesh: ShellMesh, path: Path) -> None:
     """Write a mesh as VTU.
 
     Cell arrays: ``region`` and ``stack`` (one-based, 0 where no ply lies), ``side``, ``thickness`` (m), ``areal_mass``
-    (kg/m²), ``plies``, ``e1``, ``e2``, ``e3``, ``element``. Point arrays: ``sheet``, ``row``, ``seam``, ``node``.
+    (kg/m²), ``plies``, ``e1``, ``e2``, ``e3``, ``element``, ``offset`` (height of the reference surface over the
+    laminate's middle, as a share of the thickness). Point arrays: ``sheet``, ``row``, ``seam``, ``node``.
 
     The names stand in the file's field data, each as the name of an integer array: ``region: suction main cap`` holds
     the number of that region, ``stack: 1b4f0e98`` that of the stack of this content, ``node set: root`` the solver
@@ -61,6 +126,7 @@ def _cell_arrays(mesh: ShellMesh) -> dict[str, NDArray[np.generic]]:
         "e2": mesh.e2,
         "e3": mesh.e3,
         "element": mesh.element_number,
+        "offset": mesh.offset,
     }
 
 
