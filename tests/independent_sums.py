@@ -6,8 +6,9 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from independent_blade import GAUSS_W, GAUSS_X, PRESSURE, SIDES, SUCTION, IndependentBlade, Sections
+from independent_blade import GAUSS_W, GAUSS_X, IndependentBlade, Sections
 from independent_laminate import axial_stiffness
+from independent_profiles import PRESSURE, SIDES, SUCTION
 from scipy.linalg import eigh
 
 FINITE_STEP = 1e-5  # m along z, for the slope of web feet

@@ -12,7 +12,8 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from independent_blade import SIDES, IndependentBlade, Sections, largest_thickness, read_profile_points, unit_sides
+from independent_blade import IndependentBlade, Sections
+from independent_profiles import SIDES, largest_thickness, read_profile_points, unit_sides
 from independent_sums import Beam, beam, deflection, frequencies, layers_at, strains, totals
 
 ROOT = Path(__file__).parents[1]

@@ -6,8 +6,9 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from independent_blade import IndependentBlade, Sections, naca_points, unit_sides
+from independent_blade import IndependentBlade, Sections
 from independent_laminate import Fabric, axial_stiffness
+from independent_profiles import naca_points, unit_sides
 from independent_sums import area_rates, beam, deflection, frequencies, strains, totals
 from scipy.special import ellipe
 
