@@ -35,7 +35,7 @@ def test_mesh_weighs_what_table_and_schedule_say(path: Path, order: int) -> None
     span = np.ptp(mesh.points[:, 2])
     assert centre == pytest.approx(wanted.centre, abs=2e-3 * span)
     # the trailing gap closes over two element rows instead of at once, and flat elements cut corners at first order
-    bound = {1: 4e-3, 2: 2e-3}[order]
+    bound = {1: 6e-3, 2: 2e-3}[order]
     for i, region in enumerate(mesh.regions):
         if region.name != "trailing base":
             found = area[mesh.region == i].sum()
@@ -43,4 +43,4 @@ def test_mesh_weighs_what_table_and_schedule_say(path: Path, order: int) -> None
                 wanted.areas[region.name], rel=1e-2 if region.name.endswith("trailing strip") else bound
             ), region.name
     skin = sum(area[mesh.region == i].sum() for i, r in enumerate(mesh.regions) if r.name in wanted.region_mass)
-    assert skin == pytest.approx(sum(wanted.areas.values()), rel={1: 1.5e-3, 2: 3e-4}[order])
+    assert skin == pytest.approx(sum(wanted.areas.values()), rel={1: 2e-3, 2: 1e-3}[order])
