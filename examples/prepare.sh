@@ -89,12 +89,13 @@ make_environment() {
 
 # pip_install FOLDER ARGUMENT...: install into an environment; do nothing where the same was installed before.
 pip_install() {
-    local folder=$1 wanted
+    local folder=$1 note wanted
     shift
+    note=$folder/installed-$(printf '%s ' "$@" | cksum | cut -d ' ' -f 1).txt
     wanted="$* $(sha256sum pyproject.toml)"
-    if [[ -f $folder/installed.txt && $(<"$folder/installed.txt") == "$wanted" ]]; then return; fi
+    if [[ -f $note && $(<"$note") == "$wanted" ]]; then return; fi
     say "Installing Python packages into ${folder#"$PWD"/}"
-    rm -f "$folder/installed.txt"
+    rm -f "$note"
     quietly "$folder/bin/python" -m pip install --disable-pip-version-check "$@" || fail "pip install failed."
-    printf '%s\n' "$wanted" >"$folder/installed.txt"
+    printf '%s\n' "$wanted" >"$note"
 }

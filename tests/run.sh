@@ -19,6 +19,12 @@ else
     say "pyNastran's NumPy has no wheel for this Python: the tests that read bulk data back with it are skipped."
 fi
 
+# A second solver; its wheel asks for a newer Python than it needs.
+make_environment .venv-nastran95
+pip_install .venv-nastran95 numpy
+pip_install .venv-nastran95 --no-deps --ignore-requires-python nastran95
+export SKINMESH_NASTRAN95=$PWD/.venv-nastran95/bin/python
+
 # A package that carries some 2 000 profile files; nothing of it is imported.
 make_environment .venv-airfoils
 pip_install .venv-airfoils --no-deps AeroSandbox

@@ -258,7 +258,8 @@ def _sections(page: Page, scene: _Scene, top: float) -> None:
         axes.add_collection(LineCollection(ends, colors=QUIET, linewidths=3.8, capstyle="round"))
         axes.add_collection(LineCollection(ends, colors=list(scene.paint.colours[element]), linewidths=2.6))
         page.text(x + cell[0] / 2, y + cell[1] - 14, f"z = {place:.2f} m", size=15, colour=QUIET, ha="center")
-    bar = 10.0 ** np.floor(np.log10(widest))
+    power = 10.0 ** np.floor(np.log10(widest))
+    bar = max(factor * power for factor in (0.5, 1.0, 2.0, 5.0) if factor * power <= 0.7 * widest)
     page.box(WIDTH - MARGIN - bar * scale, top + 10, bar * scale, 3, colour=INK)
     page.text(WIDTH - MARGIN - bar * scale - 10, top + 11, f"{bar:g} m", size=15, ha="right")
 
@@ -312,4 +313,4 @@ def _close_up(page: Page, scene: _Scene, top: float) -> None:
     flat = scene.middle @ camera.axes[:2].T
     seen = np.flatnonzero(frame.holds(flat) & (mesh.e3 @ camera.axes[2] > 0.2) & scene.on_skin)
     for axis, colour in zip((mesh.e1, mesh.e2, mesh.e3), AXIS_COLOURS, strict=True):
-        _quiver(axes, flat[seen], 0.6 * size * axis[seen] @ camera.axes[:2].T, colour=colour, width=2.2)
+        _quiver(axes, flat[seen], 0.5 * size * axis[seen] @ camera.axes[:2].T, colour=colour, width=2.2)
