@@ -122,14 +122,15 @@ def _refuse_broken_list(source: InputText, text_line: int, *, n_before: int) -> 
 def _joined_blocks(points: _Points) -> _Points:
     """Make one loop of two blocks; leave a loop as it is."""
     first, rest = points.xy[0], points[np.arange(1, len(points))]
-    if not (np.all(first >= 2) and np.all(first == np.round(first))):
+    if len(rest) == 0 or not (np.all(first >= 2) and np.all(first == np.round(first))):
         return points
     n_first, n_second = int(first[0]), int(first[1])
     if n_first + n_second != len(rest):
-        if np.all(np.abs(rest.xy) < first.min()):
+        # no outline begins so far away from its own second point: the line was meant to hold counts
+        if np.hypot(*(first - rest.xy[0])) > LARGEST_GAP * np.ptp(rest.xy[:, 0]):
             raise _RefusedError(
-                f"the counts {n_first} and {n_second} ask for {n_first + n_second} points, but"
-                f" {len(rest)} follow; correct the counts",
+                f"the counts {n_first} and {n_second} ask for {n_first + n_second} points, but {len(rest)} follow;"
+                " correct the counts",
                 int(points.line[0]),
             )
         return points

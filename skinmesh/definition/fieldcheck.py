@@ -101,8 +101,10 @@ def _model_at(path: FieldPath) -> type[BaseModel] | None:
     model: Any = BladeFields
     for part in path:
         if isinstance(model, type) and issubclass(model, BaseModel):
-            fields = {field.alias or name: field for name, field in model.model_fields.items()}
-            model = fields[str(part)].annotation
+            fields: dict[str | int, Any] = {field.alias or name: field for name, field in model.model_fields.items()}
+            if part not in fields:
+                return None
+            model = fields[part].annotation
             model = next((each for each in get_args(model) if each is not type(None)), model)
         else:  # a list's item, or a group's entry by its name
             model = get_args(model)[-1]
@@ -136,11 +138,10 @@ def _bound(sign: str, key: str) -> Callable[[Any, Mapping[str, Any]], str]:
     return lambda value, context: f"must be {sign} {shown(context[key])}, got {shown(value)}"
 
 
-def _length(value: Any, context: Mapping[str, Any]) -> str:
-    wanted = context.get("min_length", context.get("max_length"))
+def _length(value: Any, _context: Mapping[str, Any]) -> str:
     if not value:
         return "the list is empty"
-    return f"must have {wanted} numbers [z, z], got {shown(value)}"
+    return f"must be two numbers [z, z], got {shown(value)}"
 
 
 def _one_of(value: Any, context: Mapping[str, Any]) -> str:

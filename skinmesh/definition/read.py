@@ -82,7 +82,8 @@ def _load(document: Document, path: Path, source: Source, report: FieldReport) -
     if table is not None:
         check_extra_columns(table, along.used, report.findings)
     if table is None or report.findings.problems:
-        raise InputError(report.findings.problems)
+        # the blade file's own mistakes first, whatever was found first
+        raise InputError(sorted(report.findings.problems, key=lambda problem: problem.file != report.file))
     return BladeDefinition(
         title=" ".join((fields.title or path.stem).split()),
         stem=path.stem,

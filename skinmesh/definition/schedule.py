@@ -193,8 +193,8 @@ def _check_number_of_elements(size: Spanwise, table: ReadTable, path: FieldPath,
         many = f"some {n / 1e6:.3g} million" if n < 1e12 else "far too many"
         text = (
             f"{shown(float(size.value.min()))} m would make {many} elements, more than the"
-            f" {MOST_ELEMENTS // 1_000_000} million that are allowed; take {_round_up(coarser)} m or more (the usual size"
-            f" is {_usual_size(table):g} m)"
+            f" {MOST_ELEMENTS // 1_000_000} million that are allowed; take {_round_up(coarser)} m or more"
+            f" (the usual size is {_usual_size(table):g} m)"
         )
         report.add(path, text)
 

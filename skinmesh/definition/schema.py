@@ -11,7 +11,7 @@ from collections.abc import Mapping
 from itertools import pairwise
 from typing import Annotated, Any, Literal, cast
 
-from pydantic import BaseModel, ConfigDict, Field, PlainValidator, WithJsonSchema
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, PlainValidator, WithJsonSchema
 from pydantic.json_schema import GenerateJsonSchema, JsonSchemaValue
 from pydantic_core import PydanticCustomError, core_schema
 
@@ -84,6 +84,21 @@ Along = Annotated[
         }
     ),
 ]
+
+
+def _true_itself(value: object) -> object:
+    # True == 1 in Python, but 1 is not true in a blade file
+    if value is not True:
+        raise _refusal(f"must be true, got {shown(value)}")
+    return value
+
+
+def _no_truth(value: object) -> object:
+    if isinstance(value, bool):
+        raise _refusal(f"must be 1 or 2, got {shown(value)}")
+    return value
+
+
 Sides = Literal["suction", "pressure", "both"]
 Span = Annotated[list[float], Field(min_length=2, max_length=2)]
 Modulus = Annotated[float, Field(gt=0)]
@@ -101,7 +116,9 @@ class ProfileFields(Part):
     model_config = ConfigDict(
         json_schema_extra={"oneOf": [{"required": ["circle"]}, {"required": ["naca"]}, {"required": ["file"]}]}
     )
-    circle: Literal[True] | None = Field(None, description="A circle whose diameter is the chord.")
+    circle: Annotated[Literal[True], BeforeValidator(_true_itself)] | None = Field(
+        None, description="A circle whose diameter is the chord."
+    )
     naca: str | None = Field(None, description='The four digits of a NACA 4-digit profile, in quotes: "4424".')
     trailing_gap: float | None = Field(
         None,
@@ -235,7 +252,9 @@ class MeshFields(Part):
     across: dict[str, Annotated[int, Field(ge=1, le=1000)]] | None = Field(
         None, description="Least number of elements across a region, by the names that covers takes."
     )
-    order: Literal[1, 2] | None = Field(None, description="1: corner nodes only; 2 (default): with mid-side nodes.")
+    order: Annotated[Literal[1, 2], BeforeValidator(_no_truth)] | None = Field(
+        None, description="1: corner nodes only; 2 (default): with mid-side nodes."
+    )
     shape: Literal["quad", "triangle"] | None = Field(None, description="Shape of the elements; quad where not given.")
     surface: Literal["outer"] | None = Field(None, description="Where the nodes lie: on the mould face.")
     close_gap: float | None = Field(

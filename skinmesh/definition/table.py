@@ -149,7 +149,7 @@ def _cells(line: str, separator: str) -> list[str]:
 def _read_header(file: str, line: int, cells: list[str], findings: Findings) -> list[str] | None:
     while cells and not cells[-1]:
         cells = cells[:-1]
-    if all(is_number(cell) for cell in cells if cell):
+    if any(is_number(cell) for cell in cells):
         findings.add(
             file, "the first row must name the columns: z_m, chord_m, twist_deg, pitch_axis, profile", line=line
         )

@@ -77,7 +77,7 @@ _ADVICE = (
     ("expected ',' or '}'", "a '{' is not closed, or a ',' is missing between two fields"),
     ("expected ',' or ']'", "a '[' is not closed, or a ',' is missing between two values"),
     ("found unexpected end of stream", "a quote is opened and not closed"),
-    ("expected a single document", "the file holds several documents; remove all '---' lines but the first"),
+    ("found another document", "the file holds several documents; remove all '---' lines but the first"),
     ("found undefined alias", "an alias (*name) stands before its anchor (&name)"),
     ("found character", "a value cannot begin with this character; put it in quotes"),
 )
