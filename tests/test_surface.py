@@ -74,6 +74,21 @@ def test_no_kink_in_span_wise_slope():
     assert np.abs(after - before).max() < 1e-6
 
 
+def test_sections_between_stations_have_no_crease():
+    """Where the profiles turn smoothly, so does every blend of them: no jump from one knot interval to the next."""
+    definition = demonstration()
+    surface = loft_surface(definition)
+    z = np.linspace(*surface.z_ends, 241)[:, None]
+    for side, sign in enumerate((-1.0, 1.0)):
+        knots = surface.knots[side][5:-5]
+        before, after = (surface.section_rates(z, sign * (knots + e))[1] for e in (-1e-9, 1e-9))
+        assert np.abs(np.angle(after / before)).max() < 1e-6
+        # and over a tenth of a per cent of the chord the direction turns by little, away from the nose
+        t = sign * np.linspace(0.2, 0.99, 3000)
+        direction = surface.section_rates(z, t)[1]
+        assert np.degrees(np.abs(np.angle(direction[:, 1:] / direction[:, :-1]))).max() < 0.1
+
+
 def test_nose_is_smooth_everywhere_along_the_span():
     surface = loft_surface(demonstration())
     z = np.linspace(*surface.z_ends, 301)

@@ -41,8 +41,8 @@ class Surface:
 
     Notes
     -----
-    Fritsch, Carlson: Monotone piecewise cubic interpolation, SIAM J. Numer. Anal. 17 (1980): the interpolation along
-    the span; equal neighbours stay equal and nothing overshoots.
+    Fritsch, Carlson: Monotone piecewise cubic interpolation, SIAM J. Numer. Anal. 17 (1980): the interpolation of the
+    planform along the span; equal neighbours stay equal and nothing overshoots. Shapes: see ``_shape_slopes``.
     """
 
     z_ends: Floats
@@ -202,21 +202,60 @@ def loft_surface(blade: BladeDefinition) -> Surface:
     frame = PchipInterpolator(shapes.z, np.column_stack([shapes.frame.real, shapes.frame.imag])[:, [0, 2, 1, 3]])
     columns = [table.chord, table.twist, table.pitch_axis, table.prebend, table.sweep]
     planform = PchipInterpolator(table.z, np.column_stack([*columns, frame(table.z)]))
+    slopes = _shape_slopes(shapes)
     return Surface(
         z_ends=table.z[[0, -1]],
         stations=table.z,
         shape_z=shapes.z,
         knots=(shapes.knots[0], shapes.knots[1]),
-        pieces=(_pieces(shapes, 0), _pieces(shapes, 1)),
+        pieces=(_pieces(shapes, 0, slopes[0]), _pieces(shapes, 1, slopes[1])),
         planform=planform,
         is_mirrored=blade.hand == COUNTER_CLOCKWISE,
     )
 
 
-def _pieces(shapes: StationShapes, side: int) -> Complex:
-    """(j − 1, n − 1, 4, 4) power coefficients along z and |t| from control points at the stations."""
+def _pieces(shapes: StationShapes, side: int, slopes: Complex) -> Complex:
+    """(j − 1, n − 1, 4, 4) power coefficients along z and |t| from control points and their slopes at the stations."""
     control = shapes.control[side]
-    columns = np.concatenate([control.real, control.imag], axis=1)
-    powers = PchipInterpolator(shapes.z, columns).c[::-1]  # (4, j − 1, 2 n_control), constant first
-    n = control.shape[1]
-    return shapes.power_form(side, np.moveaxis(powers[..., :n] + 1j * powers[..., n:], 0, 1))
+    h = np.diff(shapes.z)[:, None]
+    step, low, high = np.diff(control, axis=0) / h, slopes[:-1], slopes[1:]
+    powers = [control[:-1], low, (3.0 * step - 2.0 * low - high) / h, (low + high - 2.0 * step) / h**2]
+    return shapes.power_form(side, np.stack(powers, axis=1))
+
+
+def _shape_slopes(shapes: StationShapes) -> tuple[Complex, Complex]:
+    """Span-wise slopes of the control points at the stations, shape by shape.
+
+    The rule is Fritsch and Butland's weighted harmonic mean, with the size of the whole change of shape in place of the
+    change of one value. To limit every control point by itself would crease the section where one is limited and its
+    neighbour is not; so all of them get the same weights, and the nose and the smoothness along the chord are kept.
+    Equal neighbours still have no slope, and a shape that turns back has none along the change.
+
+    Source: Fritsch, Butland: A method for constructing local monotone piecewise cubic interpolants, SIAM J. Sci. Stat.
+    Comput. 5 (1984), equation for the three-point difference formula.
+    """
+    n_pressure = shapes.control[0].shape[1]
+    values = np.concatenate(shapes.control, axis=1)
+    h = np.diff(shapes.z)
+    step = np.diff(values, axis=0) / h[:, None]
+    if len(step) == 1:
+        slopes = np.repeat(step, 2, axis=0)
+    else:
+        size = np.sqrt(np.mean(np.abs(step) ** 2, axis=1))
+        before, after = 2.0 * h[1:] + h[:-1], h[1:] + 2.0 * h[:-1]
+        weighted = before * size[1:] + after * size[:-1]
+        share = 0.5 * (before + after) / np.where(weighted > 0.0, weighted, np.inf)
+        inner = (share * size[1:])[:, None] * step[:-1] + (share * size[:-1])[:, None] * step[1:]
+        ends = [_end_slope(step[0], step[1], h[0], h[1]), _end_slope(step[-1], step[-2], h[-1], h[-2])]
+        slopes = np.concatenate([ends[0][None], inner, ends[1][None]])
+    return slopes[:, :n_pressure], slopes[:, n_pressure:]
+
+
+def _end_slope(first: Complex, second: Complex, h_first: float, h_second: float) -> Complex:
+    """One-sided three-point slope at an end, held back where it would turn round or run too far ahead."""
+    slope = ((2.0 * h_first + h_second) * first - h_first * second) / (h_first + h_second)
+    if np.vdot(first, slope).real <= 0.0:
+        return np.zeros_like(first)
+    if np.vdot(first, second).real < 0.0 and np.linalg.norm(slope) > 3.0 * np.linalg.norm(first):
+        return np.asarray(3.0 * first)
+    return np.asarray(slope)

@@ -176,7 +176,7 @@ def _split_loop(loop: Complex) -> UnitShape:
         trailing.real > 0.0 and abs(nose) < OWN_AXES * trailing.real and abs(trailing.imag) < OWN_AXES * trailing.real
     )
     origin, scale = (nose / trailing.real, chord / trailing.real) if own_axes else (0j, 1 + 0j)
-    tiny = 1e-5 * u[-1]
+    tiny = 4.0 * KNOT_GRID * u[-1]
     suction_u = np.concatenate([[nose_u], u[u < nose_u - tiny][::-1]])
     pressure_u = np.concatenate([[nose_u], u[u > nose_u + tiny]])
     return UnitShape(
