@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import os
+import signal
 import threading
 from dataclasses import replace
 
@@ -310,6 +312,35 @@ def test_a_failure_of_the_kernel_is_an_error_of_ours():
     with pytest.raises(MeshError, match="failed"), gmsh_session() as kernel:
         kernel.model.mesh.getNode(4711)
     assert not gmsh.isInitialized()
+
+
+@pytest.mark.skipif(os.name != "posix", reason="needs signals")
+@pytest.mark.parametrize("off_main_thread", [False, True])
+def test_the_kernel_leaves_the_signal_handlers_of_the_process_alone(off_main_thread):
+    caught = []
+    before = signal.signal(signal.SIGTERM, lambda *_: caught.append("term"))
+
+    def work() -> None:
+        with gmsh_session():
+            os.kill(os.getpid(), signal.SIGTERM)
+        os.kill(os.getpid(), signal.SIGTERM)
+
+    try:
+        if off_main_thread:
+            thread = threading.Thread(target=work)
+            thread.start()
+            thread.join()
+        else:
+            work()
+        read_end, write_end = os.pipe()
+        os.close(read_end)
+        with pytest.raises(BrokenPipeError):
+            os.write(write_end, b"x")
+        os.close(write_end)
+    finally:
+        signal.signal(signal.SIGTERM, before)
+    assert caught
+    assert set(caught) == {"term"}
 
 
 WEBS = [

@@ -2,7 +2,12 @@
 
 from __future__ import annotations
 
+import ctypes
+import os
+import signal
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from types import TracebackType
 from typing import Any
 
@@ -38,6 +43,11 @@ _OPTIONS = {
 """Every option that our work depends on, at the value it begins with."""
 
 
+_SIGNALS = [number for number in signal.valid_signals() if number < 32]
+_SIGACTION_BYTES = 512
+"""Enough for the struct of any system; its content is not looked at."""
+
+
 class gmsh_session:  # noqa: N801 (used as a function would be)
     """Open a clean gmsh model and put everything back afterwards.
 
@@ -56,7 +66,8 @@ class gmsh_session:  # noqa: N801 (used as a function would be)
         self._before: dict[str, float] = {}
         self._current = ""
         if self._is_ours:
-            gmsh.initialize(readConfigFiles=False, interruptible=False)
+            with _kept_signal_handlers():
+                gmsh.initialize(readConfigFiles=False, interruptible=False)
         else:
             self._before = {name: gmsh.option.getNumber(name) for name in _OPTIONS}
             self._current = gmsh.model.getCurrent()
@@ -77,7 +88,8 @@ class gmsh_session:  # noqa: N801 (used as a function would be)
                 gmsh.logger.stop()
             gmsh.model.remove()
             if self._is_ours:
-                gmsh.finalize()
+                with _kept_signal_handlers():
+                    gmsh.finalize()
             for name, value in self._before.items():
                 gmsh.option.setNumber(name, value)
             if self._current:
@@ -88,6 +100,26 @@ class gmsh_session:  # noqa: N801 (used as a function would be)
             raise MeshError(f"the mesh kernel failed: {error}") from error
         if kind is None:
             _raise_on_warnings(log)
+
+
+@contextmanager
+def _kept_signal_handlers() -> Iterator[None]:
+    """Put the process's signal handlers back: starting, gmsh sets SIGTERM and SIGPIPE to their defaults.
+
+    By sigaction(2) and not by Python's ``signal``, which works on the main thread only.
+    """
+    if os.name != "posix":
+        yield
+        return
+    libc = ctypes.CDLL(None)
+    actions = {number: ctypes.create_string_buffer(_SIGACTION_BYTES) for number in _SIGNALS}
+    for number, action in actions.items():
+        libc.sigaction(number, None, action)
+    try:
+        yield
+    finally:
+        for number, action in actions.items():
+            libc.sigaction(number, action, None)
 
 
 def _raise_on_warnings(log: list[str]) -> None:
