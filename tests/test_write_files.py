@@ -118,6 +118,13 @@ def test_extras_come_with_the_mesh_and_old_ones_go_with_it(tmp_path: Path) -> No
     assert sorted(contents(tmp_path / "out")) == sorted(TABLES)
 
 
+def test_progress_names_every_file_before_it_is_written(tmp_path: Path) -> None:
+    told: list[tuple[str, float]] = []
+    write(box(), tmp_path / "out", formats=["inp"], progress=lambda stage, done: told.append((stage, done)))
+    assert [stage for stage, _ in told] == ["write inp", "write stacks.csv", "write summary.json"]
+    assert [done for _, done in told] == pytest.approx([0.0, 1 / 3, 2 / 3])
+
+
 def test_a_failing_extra_changes_nothing(tmp_path: Path) -> None:
     out = tmp_path / "out"
     write(tube(8, 2), out)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import importlib
 import pkgutil
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from difflib import get_close_matches
 from os import PathLike
@@ -43,6 +43,7 @@ def write(
     *,
     formats: Iterable[str] = DEFAULT_FORMATS,
     extras: Mapping[str, Writer | None] | None = None,
+    progress: Callable[[str, float], None] | None = None,
 ) -> tuple[WrittenFile, ...]:
     """Write a mesh in the wanted formats, with its table of stacks and its summary.
 
@@ -60,6 +61,8 @@ def write(
     extras : mapping of str to callable or None
         Further files that belong to the mesh, such as pictures: ending of the file's name, and what writes it. None
         where it is not wanted this time; an old one is then removed like that of a format.
+    progress : callable, optional
+        Called with the name of each stage and the share of the work done when it begins.
 
     Returns
     -------
@@ -81,20 +84,25 @@ def write(
     own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, *extras)}
     try:
         with new_files(directory, is_own=own.__contains__) as stage:
-            paths = [stage / f"{mesh.stem}.{name}" for name in wanted]
-            for name, path in zip(wanted, paths, strict=True):
-                FORMATS[name].write(mesh, path)
-            for ending, table in TABLES.items():
-                paths.append(stage / f"{mesh.stem}.{ending}")
-                paths[-1].write_text(table(mesh), encoding="utf-8", newline="\n")
-            for ending, write_extra in extras.items():
-                if write_extra is not None:
-                    paths.append(stage / f"{mesh.stem}.{ending}")
-                    write_extra(mesh, paths[-1])
+            writers = {name: FORMATS[name].write for name in wanted}
+            writers |= {ending: _table_writer(table) for ending, table in TABLES.items()}
+            writers |= {ending: writer for ending, writer in extras.items() if writer is not None}
+            paths = [stage / f"{mesh.stem}.{ending}" for ending in writers]
+            for k, (ending, path) in enumerate(zip(writers, paths, strict=True)):
+                if progress is not None:
+                    progress(f"write {ending}", k / len(paths))
+                writers[ending](mesh, path)
             written = tuple(WrittenFile(path.name, path.stat().st_size) for path in paths)
     except OSError as error:
         raise OutputError(f"cannot write into {directory}: {error.strerror or error}") from error
     return written
+
+
+def _table_writer(table: Callable[[ShellMesh], str]) -> Writer:
+    def write_table(mesh: ShellMesh, path: Path) -> None:
+        path.write_text(table(mesh), encoding="utf-8", newline="\n")
+
+    return write_table
 
 
 def _known_formats(formats: Iterable[str]) -> tuple[str, ...]:
