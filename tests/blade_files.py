@@ -26,7 +26,7 @@ layout:
   trailing strip: {width: 0.1}
 plies:
   - {ply: skin, material: glass, thickness: 0.9e-3, angle: 45, covers: [skin]}
-  - {ply: cap, material: glass, thickness: 1e-3, count: 10, covers: [main cap], span: [0.4, 9.5], step: {root: 0.1, tip: 0.2}}
+  - {ply: cap, material: glass, thickness: 1e-3, count: 10, covers: [main cap], span: [0.4, 9.5], step: {root: 0.1}}
   - ply: core
     material: foam
     thickness: 0.01

@@ -62,7 +62,9 @@ IN_BLADE = [
     wrong("order: 2", "least_spacing: 0", 31, "mesh.least_spacing", "must be > 0, got 0"),
     wrong("close_gap: 0.004", "close_gap: -0.004", 32, "mesh.close_gap", "must be ≥ 0, got -0.004"),
     wrong("close_gap: 0.004", "close_gap: .nan", 32, "mesh.close_gap", "must be a finite number, got nan"),
-    wrong("close_gap: 0.004", "close_gap: 4 mm", 32, "mesh.close_gap", "must be a number, got '4 mm'", "leave the unit"),
+    wrong(
+        "close_gap: 0.004", "close_gap: 4 mm", 32, "mesh.close_gap", "must be a number, got '4 mm'", "leave the unit"
+    ),
     wrong("size: 0.12", "size: 0", 29, "mesh.size", "must be > 0, got 0"),
     wrong("size: 0.12", "size: 0.0005", 29, "mesh.size", "million", "take", "usual size is 0.0889 m"),
     wrong("size: 0.12", "size: 1e-200", 29, "mesh.size", "far too many elements"),
@@ -87,7 +89,11 @@ IN_BLADE = [
     wrong('naca: "4418"', 'naca: "4018"', 7, "profiles.thin.naca", "camber and its place", "'4018'"),
     wrong("trailing_gap: 0.004", "trailing_gap: 0.4", 7, "profiles.thin.trailing_gap", "must be < 0.3, got 0.4"),
     wrong(
-        "{file: thick.dat}", "{file: thick.dat, trailing_gap: 0.1}", 6, "profiles.thick.trailing_gap", "NACA profile only"
+        "{file: thick.dat}",
+        "{file: thick.dat, trailing_gap: 0.1}",
+        6,
+        "profiles.thick.trailing_gap",
+        "NACA profile only",
     ),
     wrong("{file: thick.dat}", "{file: thikc.dat}", 6, "profiles.thick.file", "neither at", "geometry", "'thick.dat'?"),
     # materials
@@ -107,23 +113,49 @@ IN_BLADE = [
     wrong("nu12: 0.28", "nu12: 0.28, nu23: 1.2", 9, "materials.glass", "|nu23| must be < √(E2/E3) = 1, got 1.2"),
     # layout
     wrong("width: [[0, 0.4], [10, 0.1]]", "width: [0, 0.4]", 13, "layout.caps.main cap.width", "[z, value] pairs"),
-    wrong("[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [0, 0.1]]", 13, "layout.caps.main cap.width", "z must increase", "pair 2"),
-    wrong("[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [9, l]]", 13, "layout.caps.main cap.width", "pair 2: 'l' is not a number"),
-    wrong("[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [9, 0]]", 13, "layout.caps.main cap.width", "must be > 0, got 0 at z = 9"),
+    wrong(
+        "[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [0, 0.1]]", 13, "layout.caps.main cap.width", "z must increase", "pair 2"
+    ),
+    wrong(
+        "[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [9, l]]", 13, "layout.caps.main cap.width", "pair 2: 'l' is not a number"
+    ),
+    wrong(
+        "[[0, 0.4], [10, 0.1]]", "[[0, 0.4], [9, 0]]", 13, "layout.caps.main cap.width", "must be > 0, got 0 at z = 9"
+    ),
     wrong("[[0, 0.4], [10, 0.1]]", "[]", 13, "layout.caps.main cap.width", "empty"),
     wrong("[[0, 0.4], [10, 0.1]]", "{a: 1}", 13, "layout.caps.main cap.width", "a group of fields"),
-    wrong("{from_axis: 0.0}", "{from_axis: 0.0, chord: 0.3}", 13, "layout.caps.main cap.centre", "one place", "got from"),
+    wrong(
+        "{from_axis: 0.0}", "{from_axis: 0.0, chord: 0.3}", 13, "layout.caps.main cap.centre", "one place", "got from"
+    ),
     wrong("{from_axis: 0.0}", "{}", 13, "layout.caps.main cap.centre", "must give one place", "got nothing"),
     wrong("{from_axis: 0.0}", "0.0", 13, "layout.caps.main cap.centre", "must be a group of fields", "got 0"),
     wrong("{from_axis: 0.0}", "{chord: 30}", 13, "layout.caps.main cap.centre.chord", "between 0 and 1, got 30"),
-    wrong("{from_axis: 0.0}", "{chord: chord_m}", 13, "layout.caps.main cap.centre.chord", "without a unit", "'chord_m'"),
+    wrong(
+        "{from_axis: 0.0}", "{chord: chord_m}", 13, "layout.caps.main cap.centre.chord", "without a unit", "'chord_m'"
+    ),
     wrong("centre: {from_axis: 0.0}, ", "", 13, "layout.caps.main cap.centre", "missing", "from_axis"),
-    wrong("centre: {from_axis", "sides: top, centre: {from_axis", 13, "layout.caps.main cap.sides", "suction, pressure"),
+    wrong(
+        "centre: {from_axis", "sides: top, centre: {from_axis", 13, "layout.caps.main cap.sides", "suction, pressure"
+    ),
     wrong("{cap: main cap, across: 0.2}", "{cap: main cap}", 15, "layout.webs.fore web.foot", "cap without across"),
-    wrong("{cap: main cap, across: 0.2}", "{cap: man cap, across: 0.2}", 15, "layout.webs.fore web.foot.cap", "no cap 'man cap'", "'main cap'?"),
+    wrong(
+        "{cap: main cap, across: 0.2}",
+        "{cap: man cap, across: 0.2}",
+        15,
+        "layout.webs.fore web.foot.cap",
+        "no cap 'man cap'",
+        "'main cap'?",
+    ),
     wrong("across: 0.2", "across: 1.2", 15, "layout.webs.fore web.foot.across", "between 0 and 1, got 1.2"),
     wrong("span: [1.0, 9.0]", "span: [9.0, 1.0]", 15, "layout.webs.fore web.span", "root to tip", "[9, 1]"),
-    wrong("span: [1.0, 9.0]", "span: [1.0, 11.0]", 15, "layout.webs.fore web.span", "web ends at z = 11, beyond", "z = 0 to 10"),
+    wrong(
+        "span: [1.0, 9.0]",
+        "span: [1.0, 11.0]",
+        15,
+        "layout.webs.fore web.span",
+        "web ends at z = 11, beyond",
+        "z = 0 to 10",
+    ),
     wrong("span: [1.0, 9.0]", "span: [-1, 9]", 15, "layout.webs.fore web.span", "web starts at z = -1, before"),
     wrong("span: [1.0, 9.0]", "span: [1.0]", 15, "layout.webs.fore web.span", "two numbers", "[1]"),
     wrong("span: [1.0, 9.0]", "plane_twist: 5", 15, "layout.webs.fore web.plane_twist", "from_axis only"),
@@ -133,30 +165,66 @@ IN_BLADE = [
     wrong("fore web:", "suction web:", 15, "layout.webs.suction web", "meaning of its own"),
     wrong("fore web:", "main cap:", 15, "layout.webs.main cap", "a cap has this name too"),
     wrong("fore web:", '"  ":', 15, "layout.webs.  ", "blanks at its ends"),
-    wrong("leading strip: {width: 0.1}", "leading strip: 0.1", 18, "layout.leading strip", "group of fields", "got 0.1"),
-    wrong("leading strip: {width: 0.1}", "nose strip: {width: 0.1}", 18, "layout.nose strip", "no such field", "leading strip"),
+    wrong(
+        "leading strip: {width: 0.1}", "leading strip: 0.1", 18, "layout.leading strip", "group of fields", "got 0.1"
+    ),
+    wrong(
+        "leading strip: {width: 0.1}",
+        "nose strip: {width: 0.1}",
+        18,
+        "layout.nose strip",
+        "no such field",
+        "leading strip",
+    ),
     # plies
-    wrong("covers: [skin]", "covers: [spar cap]", 21, "plies[0].covers", "no region 'spar cap'", "leading panel", "did you mean 'main cap'?"),
+    wrong(
+        "covers: [skin]",
+        "covers: [spar cap]",
+        21,
+        "plies[0].covers",
+        "no region 'spar cap'",
+        "leading panel",
+        "did you mean 'main cap'?",
+    ),
     wrong("covers: [skin]", "covers: skin", 21, "plies[0].covers", "must be a list, got 'skin'", "write [skin]"),
     wrong("covers: [skin]", "covers: []", 21, "plies[0].covers", "list is empty"),
     wrong("covers: [skin]", "covers: [skin, skin]", 21, "plies[0].covers", "'skin' is there twice"),
     wrong("covers: [skin]", "covers: [1]", 21, "plies[0].covers[0]", "must be a text, got 1"),
     wrong("covers: [skin]", "covers: [middle panel]", 21, "plies[0].covers", "no region 'middle panel'"),
     wrong(", covers: [skin]", "", 21, "plies[0].covers", "missing", "[skin]"),
-    wrong("material: glass, thickness: 0.9e-3", "material: gals, thickness: 0.9e-3", 21, "plies[0].material", "no material 'gals'", "known: glass, foam", "'glass'?"),
+    wrong(
+        "material: glass, thickness: 0.9e-3",
+        "material: gals, thickness: 0.9e-3",
+        21,
+        "plies[0].material",
+        "no material 'gals'",
+        "known: glass, foam",
+        "'glass'?",
+    ),
     wrong("thickness: 0.9e-3", "thickness: -0.0012", 21, "plies[0].thickness", "must be > 0, got -0.0012"),
-    wrong("thickness: 0.9e-3", "thickness: 0.9", 21, "plies[0].thickness", "more than half the longest chord", "0.9e-3"),
+    wrong(
+        "thickness: 0.9e-3", "thickness: 0.9", 21, "plies[0].thickness", "more than half the longest chord", "0.9e-3"
+    ),
     wrong("thickness: 0.9e-3", "thickness: true", 21, "plies[0].thickness", "must be a number", "got true"),
     wrong("angle: 45", "angle: ±45", 21, "plies[0].angle", "must be a number, got '±45'"),
     wrong("angle: 45", "angle: 450", 21, "plies[0].angle", "must be ≤ 360, got 450"),
-    wrong("angle: 45", "outline: [[0, 0], [1, 0], [1, 1]]", 21, "plies[0].outline", "not available in this version", "span"),
+    wrong(
+        "angle: 45",
+        "outline: [[0, 0], [1, 0], [1, 1]]",
+        21,
+        "plies[0].outline",
+        "not available in this version",
+        "span",
+    ),
     wrong("angle: 45", "angel: 45", 21, "plies[0].angel", "no such field", "did you mean 'angle'?"),
     wrong("count: 10", "count: -1", 22, "plies[1].count", "between 0 and 1000, got -1"),
     wrong("span: [0.4, 9.5]", "span: [0.4, 10.5]", 22, "plies[1].span", "ply ends at z = 10.5, beyond the blade"),
     wrong("root: 0.1", "root: -0.1", 22, "plies[1].step.root", "must be ≥ 0, got -0.1"),
     wrong("root: 0.1", "foot: 0.1", 22, "plies[1].step.foot", "no such field", "did you mean 'root'?"),
     wrong("thickness: 0.01", "thickness: 0.01\n    thickness: 0.02", 26, "plies[2].thickness", "line 25", "line 26"),
-    wrong("material: foam\n", "material: foam\n    matrial: foam\n", 25, "plies[2].matrial", "did you mean 'material'?"),
+    wrong(
+        "material: foam\n", "material: foam\n    matrial: foam\n", 25, "plies[2].matrial", "did you mean 'material'?"
+    ),
     # YAML itself
     wrong("order: 2", "order: [2", 32, "", "not YAML", "'[' is not closed", "line 31"),
     wrong("order: 2", "\torder: 2", 31, "", "not YAML", "tab"),
@@ -170,7 +238,7 @@ IN_BLADE = [
     wrong("title: test blade, invented", "title: a\x07b", 1, "", "character that plain text cannot have"),
     wrong("title: test blade, invented", 'title: "a\\ud800b"', 1, "title", "cannot be shown"),
     wrong("order: 2", "order: 2\n---\na: 1", 32, "", "several documents"),
-]  # fmt: skip
+]
 
 IN_TABLE = [
     wrong("3.0, 1.6, 8", "3.0, l.6, 8", 5, "row 3 (z_m = 3), chord_m", "'l.6' is not a number"),
@@ -179,15 +247,21 @@ IN_TABLE = [
     wrong("3.0, 1.6, 8", "3.0, #N/A, 8", 5, "row 3 (z_m = 3), chord_m", "must be a finite number, got '#N/A'"),
     wrong("3.0, 1.6, 8", "3.0, 1e999, 8", 5, "row 3 (z_m = 3), chord_m", "must be a finite number, got '1e999'"),
     wrong("3.0, 1.6, 8", "3.0, , 8", 5, "row 3 (z_m = 3), chord_m", "cell is empty"),
-    wrong("3.0, 1.6, 8", "3.0, 1.6 m, 8", 5, "row 3 (z_m = 3), chord_m", "'1.6 m' is not a number", "leave the unit out"),
+    wrong(
+        "3.0, 1.6, 8", "3.0, 1.6 m, 8", 5, "row 3 (z_m = 3), chord_m", "'1.6 m' is not a number", "leave the unit out"
+    ),
     wrong("3.0, 1.6, 8", "0.5, 1.6, 8", 5, "row 3 (z_m = 0.5), z_m", "z must increase", "it follows 1"),
     wrong("3.0, 1.6, 8", "1.0, 1.6, 8", 5, "row 3 (z_m = 1), z_m", "z must increase"),
-    wrong("0.0, 1.0, 12, 0.5, ring,", "-0.5, 1.0, 12, 0.5, ring,", 3, "row 1 (z_m = -0.5), z_m", "0 or above, got -0.5"),
+    wrong(
+        "0.0, 1.0, 12, 0.5, ring,", "-0.5, 1.0, 12, 0.5, ring,", 3, "row 1 (z_m = -0.5), z_m", "0 or above, got -0.5"
+    ),
     wrong("8, 0.36", "800, 0.36", 5, "row 3 (z_m = 3), twist_deg", "between -180 and 180 degrees, got 800"),
     wrong("8, 0.36", "8, 36", 5, "row 3 (z_m = 3), pitch_axis", "fraction", "got 36", "divided by 100"),
     wrong(", 0.24", ", 24", 6, "row 4 (z_m = 6), thickness_ratio", "at most 1", "got 24", "divided by 100"),
     wrong(", 0.24", ", 0.24, 7", 6, "", "this row has 7 cells, the header 6"),
-    wrong("0.36, thick", "0.36, thik", 5, "row 3 (z_m = 3), profile", "no profile 'thik' in the blade file", "'thick'?"),
+    wrong(
+        "0.36, thick", "0.36, thik", 5, "row 3 (z_m = 3), profile", "no profile 'thik' in the blade file", "'thick'?"
+    ),
     wrong("0.0, 1.0, 12, 0.5, ring,", "0.0, 1.0, 12, 0.5, ,", 3, "row 1 (z_m = 0), profile", "first station must name"),
     wrong("0, 0.3, thin,\n", "0, 0.3, , 0.2\n", 8, "row 6 (z_m = 10), profile", "last station must name"),
     wrong("chord_m,", "chord,", 2, "chord", "must carry a unit", "chord_m or chord_mm"),
@@ -196,10 +270,18 @@ IN_TABLE = [
     wrong("pitch_axis", "Pitch_axis", 2, "Pitch_axis", "must be pitch_axis"),
     wrong(" thickness_ratio", " z_m", 2, "z_m", "twice"),
     wrong(" thickness_ratio", " chord_mm", 2, "", "chord_m and chord_mm give the same"),
-    wrong(" thickness_ratio", " thicknes_ratio", 2, "thicknes_ratio", "no such column", "did you mean 'thickness_ratio'?"),
+    wrong(
+        " thickness_ratio", " thicknes_ratio", 2, "thicknes_ratio", "no such column", "did you mean 'thickness_ratio'?"
+    ),
     wrong("profile, thickness_ratio", ", thickness_ratio", 2, "", "column 5 has no name"),
-    wrong("# an invented table\nz_m, chord_m, twist_deg, pitch_axis, profile, thickness_ratio\n", "", 1, "", "first row must name the columns"),
-]  # fmt: skip
+    wrong(
+        "# an invented table\nz_m, chord_m, twist_deg, pitch_axis, profile, thickness_ratio\n",
+        "",
+        1,
+        "",
+        "first row must name the columns",
+    ),
+]
 
 IN_PROFILE = [
     wrong(PROFILE, "title\n1 0\n0.5 0.1\n0 0\n0.5 -0.1\n1 0\n", 0, "", "has 5 different points", "at least 10"),
@@ -210,11 +292,25 @@ IN_PROFILE = [
     wrong("70 10\n55 14\n", "55 14\n70 10\n", 5, "", "jumps back", "out of order"),
     wrong("100 1.5\n", "100 -3\n", 2, "", "crosses itself"),
     wrong(PROFILE, "\n".join(PROFILE.splitlines()[:12]), 12, "", "no loop", "last point (0, 0)", "100% of the chord"),
-    wrong(PROFILE, PROFILE.replace("thick outline, invented", "thick\n12 11"), 2, "", "counts 12 and 11", "23 points", "21 follow"),
+    wrong(
+        PROFILE,
+        PROFILE.replace("thick outline, invented", "thick\n12 11"),
+        2,
+        "",
+        "counts 12 and 11",
+        "23 points",
+        "21 follow",
+    ),
     wrong(PROFILE, PROFILE.replace("thick outline, invented", "thick\n11 10"), 3, "", "first block", "from 100 to 0"),
     wrong(PROFILE, "\n".join(f"{x} 0" for x in range(12)), 0, "", "one line"),
-    wrong(PROFILE, "\n".join(f"{y} {x}" for x, y in (line.split() for line in PROFILE.splitlines()[1:])), 0, "", "as high as long"),
-]  # fmt: skip
+    wrong(
+        PROFILE,
+        "\n".join(f"{y} {x}" for x, y in (line.split() for line in PROFILE.splitlines()[1:])),
+        0,
+        "",
+        "as high as long",
+    ),
+]
 
 
 @pytest.mark.parametrize("mistake", IN_BLADE, ids=lambda m: f"{m.field}: {m.new[:30]!r}")
@@ -296,13 +392,15 @@ def test_one_mistake_is_told_once(tmp_path):
         ("just words\n", "group of fields"),
         ("- a\n- b\n", "group of fields"),
         ("[" * 5000, "nested more than 40 levels"),
-        ("a: &a [x, x, x, x, x, x, x, x, x, x]\n" + "".join(
-            f"{chr(98 + k)}: &{chr(98 + k)} [{', '.join([f'*{chr(97 + k)}'] * 10)}]\n" for k in range(8)
-        ), "aliases"),
+        (
+            "a: &a [x, x, x, x, x, x, x, x, x, x]\n"
+            + "".join(f"{chr(98 + k)}: &{chr(98 + k)} [{', '.join([f'*{chr(97 + k)}'] * 10)}]\n" for k in range(8)),
+            "aliases",
+        ),
         ("a: &a [*a]\n", "inside its own anchor"),
     ],
     ids=["empty", "comment", "words", "list", "deep", "swelling", "circular"],
-)  # fmt: skip
+)
 def test_what_is_no_blade_file(tmp_path, text, words):
     path = tmp_path / "blade.yaml"
     path.write_text(text, encoding="utf-8")

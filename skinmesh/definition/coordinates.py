@@ -16,6 +16,7 @@ Floats = NDArray[np.float64]
 FEWEST_POINTS = 10
 MOST_POINTS = 20_000
 LARGEST_GAP = 0.35  # of the chord; the two ends of a loop lie nearer than this, however blunt the trailing edge
+LARGEST_LAG = 0.1  # of the chord, by which one end of a loop may lie ahead of the other
 SHARPEST_TURN = np.radians(135.0)  # an outline that turns more than this away from its edges doubles back
 EDGE_ZONE = 0.05  # of the chord at both edges, where sharp corners belong to the shape
 _NUMBER = re.compile(r"[-+]?(\d+\.?\d*|\.\d+)([eEdD][-+]?\d+)?\Z")
@@ -174,10 +175,10 @@ def _check_closing(loop: _Points) -> None:
     chord = np.ptp(xy[:, 0])
     for end, which in ((0, "first"), (-1, "last")):
         ahead = (xy[:, 0].max() - xy[end, 0]) / chord
-        if ahead > LARGEST_GAP:
+        if ahead > LARGEST_LAG:
             raise _RefusedError(
                 f"is no loop: the {which} point ({xy[end, 0]:g}, {xy[end, 1]:g}) lies {ahead:.0%} of the chord ahead of"
-                " the trailing edge; list the points from the trailing edge over one side to the leading edge and back"
+                " the trailing edge; is the file cut off? List the points from the trailing edge over one side to the leading edge and back"
                 " over the other, or two blocks after a line with their counts",
                 int(loop.line[end]),
             )

@@ -293,7 +293,7 @@ class BladeFields(Part):
     plies: list[PlyFields] | None = Field(
         None, description="The ply schedule, from the mould face inwards; on webs from the fore face aft."
     )
-    mesh: MeshFields | None = Field(None, description="What is asked of the mesh.")
+    mesh: MeshFields | None = Field(None, description="Size, order and shape of the elements.")
 
 
 class _EditorSchema(GenerateJsonSchema):
