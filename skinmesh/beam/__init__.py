@@ -1,0 +1,1 @@
+"""Section properties of the blade as a beam, from the exact sections and from the mesh."""
