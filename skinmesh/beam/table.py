@@ -12,6 +12,7 @@ from skinmesh.beam.meshcut import element_row_middles, mesh_sections
 from skinmesh.beam.sections import SectionProperties
 from skinmesh.beam.totals import BladeTotals, exact_totals, sum_along
 from skinmesh.definition.blade import BladeDefinition
+from skinmesh.errors import InputError, Problem
 from skinmesh.frozen import freeze_array
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.skin.unroll import unroll_skin
@@ -104,10 +105,15 @@ def beam_table(blade: BladeDefinition, mesh: ShellMesh, *, z: ArrayLike | None =
     Raises
     ------
     InputError
-        The layout does not fit on the skin.
+        The layout does not fit on the skin, or the blade has no plies.
     ValueError
         A z outside the blade.
     """
+    if not blade.plies:
+        file = blade.sources[0].file if blade.sources else blade.stem
+        raise InputError(
+            [Problem(file, 0, "plies", "the blade has none: without a laminate a section has no stiffness")]
+        )
     surface = loft_surface(blade)
     skin, _ = unroll_skin(blade, surface)
     middle, length = element_row_middles(mesh)
