@@ -1,0 +1,1 @@
+"""Checks of a built mesh, from its files alone."""

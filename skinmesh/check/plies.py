@@ -1,0 +1,241 @@
+"""Plies: bare elements, holes, plies that lie twice, stacks that differ within a region, order, areas, offset."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from itertools import groupby
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.check.finding import Finding, listed, not_made, span_of, verdict_of
+from skinmesh.check.limits import Limit
+from skinmesh.check.spantable import SpanTable
+from skinmesh.mesh.measure import element_areas
+from skinmesh.mesh.shellmesh import ShellMesh
+
+Ints = NDArray[np.int64]
+
+SCHEDULE = "one ply schedule, region by region"
+NO_PLIES = "the blade file has no plies"
+
+
+def check_plies(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit]) -> list[Finding]:
+    """Coverage, missing and doubled plies, stacks across a region, order and area of plies, and the offset.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+    table : SpanTable
+    limits : mapping of str to Limit
+
+    Returns
+    -------
+    list of Finding
+    """
+    if not mesh.stacks:
+        names = (
+            "coverage",
+            "missing plies",
+            "doubled plies",
+            "stacks across regions",
+            "ply order",
+            "ply areas",
+            "offset",
+        )
+        return [not_made(name, NO_PLIES) for name in names]
+    return [
+        _coverage(mesh),
+        _missing(mesh, table),
+        _doubled(mesh, table),
+        _across(mesh, table),
+        _order(mesh, table),
+        _areas(mesh, table, limits["ply area"]),
+        _offset(mesh),
+    ]
+
+
+def _coverage(mesh: ShellMesh) -> Finding:
+    bare = np.flatnonzero(mesh.stack < 0)
+    return Finding(
+        "coverage",
+        f"{len(bare)} of {len(mesh.cells)} elements without plies",
+        "none",
+        "an element without plies has no stiffness",
+        verdict_of(fails=len(bare)),
+        span_of(mesh, bare),
+        bare,
+    )
+
+
+def _missing(mesh: ShellMesh, table: SpanTable) -> Finding:
+    """A ply with element rows before and behind that lack it, between rows that have it."""
+    places, elements = [], []
+    for region, rows, layers in _by_region(mesh, table):
+        has = layers > 0
+        before = np.maximum.accumulate(has, axis=0)
+        behind = np.maximum.accumulate(has[::-1], axis=0)[::-1]
+        hole = before & behind & ~has
+        for ply in np.flatnonzero(hole.any(axis=0)):
+            lacking = rows[hole[:, ply]]
+            places.append(f"'{table.plies[ply]}' on {_row_text(mesh, table, region, lacking)}")
+            elements.append(np.flatnonzero((mesh.region == region) & np.isin(table.row, lacking)))
+    found = np.unique(np.concatenate(elements)) if elements else np.zeros(0, dtype=np.int64)
+    return Finding(
+        "missing plies",
+        f"{len(places)} holes along the span in a ply of a region (two pieces that are meant want two names)",
+        "none",
+        SCHEDULE,
+        verdict_of(fails=len(places)),
+        listed(places),
+        found,
+        {"places": places},
+    )
+
+
+def _doubled(mesh: ShellMesh, table: SpanTable) -> Finding:
+    """A ply that has twice the layers, or more pieces, on some rows than on the rows at both ends of them."""
+    pieces = np.zeros_like(table.counts)
+    number = {name: i for i, name in enumerate(table.plies)}
+    for s, stack in enumerate(mesh.stacks):
+        np.add.at(pieces[s], [number[name] for name, _ in groupby(layer.ply for layer in stack.layers)], 1)
+    places, elements, n_split = [], [], 0
+    for region, rows, layers in _by_region(mesh, table):
+        _, stacks = table.main_stacks(region)
+        for ply in range(len(table.plies)):
+            for lines in _twice(layers[:, ply], pieces[stacks, ply]):
+                doubled = rows[lines]
+                is_split = bool(np.any(pieces[stacks[lines], ply] > 1))
+                n_split += is_split
+                places.append(f"'{table.plies[ply]}' on {_row_text(mesh, table, region, doubled)}")
+                elements.append(np.flatnonzero((mesh.region == region) & np.isin(table.row, doubled)))
+    found = np.unique(np.concatenate(elements)) if elements else np.zeros(0, dtype=np.int64)
+    return Finding(
+        "doubled plies",
+        f"{len(places)} plies lie twice on some rows and once on both sides of them, {n_split} of these in two pieces",
+        "warn 1, fail 1 in two pieces",
+        SCHEDULE,
+        verdict_of(fails=n_split, warns=len(places)),
+        listed(places),
+        found,
+        {"places": places},
+    )
+
+
+def _twice(layers: Ints, pieces: Ints) -> Iterator[slice]:
+    """Runs of rows with twice the layers, or more pieces, than the runs before and behind, which are alike."""
+    both = np.column_stack([layers, pieces])
+    starts = np.concatenate([[0], np.flatnonzero(np.any(np.diff(both, axis=0) != 0, axis=1)) + 1, [len(both)]])
+    runs = both[starts[:-1]]
+    for i in range(1, len(runs) - 1):
+        before, own, behind = runs[i - 1 : i + 2]
+        if np.array_equal(before, behind) and before[0] > 0 and (own[0] == 2 * before[0] or own[1] > before[1]):
+            yield slice(int(starts[i]), int(starts[i + 1]))
+
+
+def _across(mesh: ShellMesh, table: SpanTable) -> Finding:
+    """Elements of one region and one element row whose stack is not that of most of them."""
+    main = np.full((len(mesh.regions), table.n_rows), -1)
+    for region in range(len(mesh.regions)):
+        rows, stacks = table.main_stacks(region)
+        main[region, rows] = stacks
+    stack = np.where(mesh.stack < 0, len(mesh.stacks), mesh.stack)
+    # An element without plies is for the check of coverage to name.
+    beyond = np.flatnonzero((stack != main[mesh.region, table.row]) & (mesh.stack >= 0))
+    return Finding(
+        "stacks across regions",
+        f"{len(beyond)} elements have another stack than most of their region on the same element row",
+        "none",
+        SCHEDULE,
+        verdict_of(fails=len(beyond)),
+        span_of(mesh, beyond),
+        beyond,
+    )
+
+
+def _order(mesh: ShellMesh, table: SpanTable) -> Finding:
+    """Stacks whose plies do not follow the schedule from the +e3 face inwards."""
+    number = {name: i for i, name in enumerate(table.plies)}
+    pieces = [[number[name] for name, _ in groupby(layer.ply for layer in stack.layers)] for stack in mesh.stacks]
+    # A name that comes back within one stack stands for several lines of the schedule and says nothing of order.
+    repeated = {ply for listed_plies in pieces for ply in listed_plies if listed_plies.count(ply) > 1}
+    wrong = np.array(
+        [bool(np.any(np.diff([ply for ply in listed_plies if ply not in repeated]) < 0)) for listed_plies in pieces]
+    )
+    beyond = np.flatnonzero(np.append(wrong, False)[mesh.stack])
+    names = listed(f"stack {k + 1}" for k in np.flatnonzero(wrong))
+    return Finding(
+        "ply order",
+        f"{np.count_nonzero(wrong)} of {len(mesh.stacks)} stacks against the order of the schedule",
+        "none",
+        "plies are listed from the +e3 face inwards",
+        verdict_of(fails=wrong.any()),
+        f"{names}; {span_of(mesh, beyond)}" if wrong.any() else "",
+        beyond,
+    )
+
+
+def _areas(mesh: ShellMesh, table: SpanTable, limit: Limit) -> Finding:
+    """Area of each ply over the elements against its flat pattern at its exact ends."""
+    flat = mesh.report.ply_areas
+    if not flat:
+        return not_made("ply areas", "the summary has no flat-pattern areas")
+    laid = (
+        np.bincount(
+            np.where(mesh.stack < 0, len(mesh.stacks), mesh.stack),
+            weights=element_areas(mesh),
+            minlength=len(table.counts),
+        )
+        @ table.counts
+    )
+    wanted = np.array([flat.get(name, 0.0) for name in table.plies])
+    off = np.abs(laid - wanted) / np.where(wanted > 0, wanted, np.maximum(laid, 1e-30))
+    worst = int(off.argmax())
+    return Finding(
+        "ply areas",
+        f"area of a ply on the elements off from its flat pattern by {100 * off[worst]:.2f} % at most",
+        limit.text,
+        f"{limit.source}; ply ends move to element rows, here by {mesh.report.ply_end_move:.3g} m at most",
+        verdict_of(fails=off[worst] > limit.fail, warns=off[worst] > limit.warn),
+        f"ply '{table.plies[worst]}': {laid[worst]:.4g} m² laid, {wanted[worst]:.4g} m² in the pattern",
+        details={
+            "plies": [
+                {"ply": name, "laid_m2": float(a), "pattern_m2": float(b)}
+                for name, a, b in zip(table.plies, laid, wanted, strict=True)
+            ]
+        },
+    )
+
+
+def _offset(mesh: ShellMesh) -> Finding:
+    is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
+    if mesh.surface == "outer":
+        beyond = np.flatnonzero(np.abs(mesh.offset - np.where(is_web, 0.0, 0.5)) > 1e-9)
+        limit, source = "0.5 on skins, 0 on webs", "nodes on the outward face of the skin, in the middle of webs"
+    elif mesh.surface == "mid":
+        beyond = np.flatnonzero(~(np.abs(mesh.offset) <= 0.5 + 1e-9))
+        limit, source = "−0.5 to 0.5", "the reference surface lies within the laminate"
+    else:
+        return not_made("offset", f"no rule for a reference surface '{mesh.surface}'")
+    values = listed(f"{value:g}" for value in np.unique(np.round(mesh.offset, 6)))
+    return Finding(
+        "offset",
+        f"height of the nodes over the laminate's middle, in thicknesses: {values}; {len(beyond)} elements beyond",
+        limit,
+        source,
+        verdict_of(fails=len(beyond)),
+        span_of(mesh, beyond),
+        beyond,
+    )
+
+
+def _by_region(mesh: ShellMesh, table: SpanTable) -> Iterator[tuple[int, Ints, Ints]]:
+    for region in range(len(mesh.regions)):
+        rows, layers = table.layers(region)
+        if len(rows):
+            yield region, rows, layers
+
+
+def _row_text(mesh: ShellMesh, table: SpanTable, region: int, rows: Ints) -> str:
+    low, high = table.z[rows.min()], table.z[rows.max() + 1]
+    return f"{mesh.regions[region].name}, z = {low:.3f} to {high:.3f} m"

@@ -1,0 +1,96 @@
+"""``skinmesh check``: whether a built mesh can be trusted."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from time import perf_counter
+
+import click
+from rich.console import Console
+from rich.table import Table
+from rich.text import Text
+
+from skinmesh.check.finding import FAIL, NOT_MADE, PASS, WARN
+from skinmesh.check.run import CheckReport, check_directory, write_checks
+from skinmesh.commands.closing import CAUTION, print_timings, printable
+from skinmesh.commands.stages import shown_stages
+
+CHECK_FAILED = 1
+PIPE_WIDTH = 160
+COLOURS = {PASS: "green", WARN: "yellow", FAIL: "bold red", NOT_MADE: "dim"}
+
+
+@click.command()
+@click.argument("directory", metavar="DIR", type=click.Path(path_type=Path))
+@click.option(
+    "--inputs",
+    metavar="FOLDER",
+    type=click.Path(path_type=Path),
+    multiple=True,
+    help="Where the input files lie, to compare them with the hashes of the build; may be given again.",
+)
+@click.option("--timings", is_flag=True, help="Also print time and peak memory of each stage.")
+@click.pass_context
+def check(context: click.Context, directory: Path, inputs: tuple[Path, ...], timings: bool) -> None:
+    """Check the built mesh in DIR from its files alone.
+
+    Prints a table: what was measured, the limit and where it comes from, the verdict, and where the worst is. The
+    same goes into DIR as checks.json, and the elements beyond a limit as named sets into checks.inp. Ends with exit
+    status 1 when a check failed.
+
+    \b
+    Examples:
+      skinmesh check marram-24-mesh
+      skinmesh check marram-24-mesh --inputs my-blade
+    """
+    start = perf_counter()
+    with shown_stages() as stages:
+        report = check_directory(directory, input_folders=[*inputs, Path.cwd()], progress=stages.begin)
+        paths = write_checks(report)
+        stages.end()
+    console = Console(highlight=False, markup=False, emoji=False, soft_wrap=False)
+    if not console.is_terminal:
+        console = Console(highlight=False, markup=False, emoji=False, width=PIPE_WIDTH)
+    print_report(console, report)
+    console.print(Text(f"Written: {', '.join(printable(str(path)) for path in paths)}"))
+    console.print(f"Done in {perf_counter() - start:.1f} s.")
+    console.print(Text(CAUTION, style="dim"))
+    if timings:
+        print_timings(console, stages.finished)
+    if report.has_failed:
+        context.exit(CHECK_FAILED)
+
+
+def print_report(console: Console, report: CheckReport) -> None:
+    """Print every line of a report as a table, and how many there are of each verdict.
+
+    Parameters
+    ----------
+    console : rich Console
+    report : CheckReport
+    """
+    mesh = report.built.mesh
+    console.print(Text(printable(f"{mesh.title}: {len(mesh.cells)} elements"), style="bold"))
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
+    table.add_column("verdict", no_wrap=True)
+    table.add_column("check", no_wrap=True)
+    table.add_column("measured", ratio=5, overflow="fold")
+    table.add_column("limit (from)", ratio=4, overflow="fold")
+    table.add_column("worst at", ratio=4, overflow="fold")
+    previous = ""
+    for finding in report.findings:
+        source = f" ({finding.source})" if finding.source else ""
+        table.add_row(
+            Text(finding.verdict, style=COLOURS[finding.verdict]),
+            Text(finding.check if finding.check != previous else ""),
+            Text(printable(finding.measured)),
+            Text(printable(f"{finding.limit}{source}")),
+            Text(printable(finding.where)),
+        )
+        previous = finding.check
+    console.print(table)
+    counts = report.counts
+    words = (f"{counts[PASS]} passed", f"{counts[WARN]} warn", f"{counts[FAIL]} failed", f"{counts[NOT_MADE]} not made")
+    console.print(Text(", ".join(words) + ".", style="bold red" if report.has_failed else "bold"))
+    if counts[NOT_MADE]:
+        console.print("A check that could not be made is no pass.")
