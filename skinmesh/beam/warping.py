@@ -94,8 +94,10 @@ def _shear_centre(walls: Walls, terms: WallTerms, stiffness: Floats, flow: Float
     # bridges are rigid: along them the warping follows the twist alone
     low = warp[walls.nodes[:, 0]] - terms.bridges[:, 0]
     high = warp[walls.nodes[:, 1]] + terms.bridges[:, 1]
-    passed = np.cumsum(terms.slack_steps, axis=1) - 0.5 * terms.slack_steps
-    share = passed / terms.slack[:, None]
+    # along the wall it follows the length: exact in a straight wall
+    way = walls.ends[:, 1] - walls.ends[:, 0]
+    length = np.maximum(np.sum(way**2, axis=1), np.finfo(float).tiny)
+    share = np.einsum("wpd,wd->wp", walls.place - walls.ends[:, :1], way) / length[:, None]
     along = low[:, None] + share * (high - low)[:, None]
     work = -np.einsum("wpf,wp->wf", growth, along)
     moment = np.stack(
