@@ -178,8 +178,8 @@ def _check_closing(loop: _Points) -> None:
         if ahead > LARGEST_LAG:
             raise _RefusedError(
                 f"is no loop: the {which} point ({xy[end, 0]:g}, {xy[end, 1]:g}) lies {ahead:.0%} of the chord ahead of"
-                " the trailing edge; is the file cut off? List the points from the trailing edge over one side to the leading edge and back"
-                " over the other, or two blocks after a line with their counts",
+                " the trailing edge; is the file cut off? List the points from the trailing edge over one side to the"
+                " leading edge and back over the other, or two blocks after a line with their counts",
                 int(loop.line[end]),
             )
     gap = np.hypot(*(xy[0] - xy[-1])) / chord
