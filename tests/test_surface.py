@@ -89,6 +89,17 @@ def test_sections_between_stations_have_no_crease():
         assert np.degrees(np.abs(np.angle(direction[:, 1:] / direction[:, :-1]))).max() < 0.1
 
 
+def test_trailing_edges_never_change_places():
+    """A sharp station between a round one and a blunt one: the gap stays between its neighbours' gaps."""
+    profiles = {"ring": CircleProfile(), "sharp": NacaProfile("0012", 0.0), "blunt": NacaProfile("4430", 0.05)}
+    for names in (["ring", "sharp", "blunt", "ring"], ["blunt", "sharp", "ring", "blunt"]):
+        surface = loft_surface(blade(stations([0, 1, 2, 5], [1, 1, 1, 1], names), profiles))
+        z = np.linspace(0, 5, 501)
+        gap = surface.section(z, np.ones_like(z)) - surface.section(z, -np.ones_like(z))
+        assert gap.imag.min() > -1e-12
+        assert gap.imag.max() < 0.05 + 1e-12
+
+
 def test_nose_is_smooth_everywhere_along_the_span():
     surface = loft_surface(demonstration())
     z = np.linspace(*surface.z_ends, 301)

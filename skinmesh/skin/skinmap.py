@@ -99,6 +99,8 @@ class SkinMap:
         Elements across the trailing base.
     closing : (2 Σn + 1,) float array
         At the levels: 0 where the trailing edge has its full gap, 1 where it is closed.
+    pull : (2 Σn + 1, 3) float array, m
+        At the levels: how far the suction trailing edge is moved to close the gap; the pressure one moves against it.
     strips : tuple of Strip
         One a gap between seams, then the trailing base, then one a web.
     """
@@ -112,6 +114,7 @@ class SkinMap:
     bases: tuple[BaseSpan, ...]
     n_base: int
     closing: Floats
+    pull: Floats
     strips: tuple[Strip, ...]
 
     @property
@@ -177,11 +180,10 @@ class SkinMap:
     def _skin_points(self, row: Floats, seam: Floats) -> Floats:
         z = self.z_at(row)
         points = self.surface.points(z, self.surface_parameter(row, seam))
+        # the pull on the edges fades linearly to the next seam of each side
         last = self.n_seams - 1
-        # a closed trailing edge draws the last gap of each side to the middle, linearly from its inner seam
-        pull = np.clip(1.0 - seam, 0.0, 1.0) - np.clip(seam - last + 1.0, 0.0, 1.0)
-        pull *= np.interp(row, self.levels.row, self.closing)
-        moved = np.flatnonzero(pull)
-        ends = [self.surface.points(z[moved], np.full(len(moved), t)) for t in (1.0, -1.0)]
-        points[moved] += 0.5 * pull[moved][:, None] * (ends[0] - ends[1])
+        share = np.clip(seam - last + 1.0, 0.0, 1.0) - np.clip(1.0 - seam, 0.0, 1.0)
+        moved = np.flatnonzero(share)
+        for axis in range(3):
+            points[moved, axis] += share[moved] * np.interp(row[moved], self.levels.row, self.pull[:, axis])
         return np.asarray(points)

@@ -13,7 +13,11 @@ Floats = NDArray[np.float64]
 
 N_SAMPLES = 60  # between two stations
 CLOSING_LENGTH = 2.0  # in element sizes: the gap closes over two element rows
-LEAST_STRETCH = 0.5  # a closing shorter than this, in element sizes, begins at the next row instead
+INSIDE_SHARE = 0.4  # of an open part that a closing at one of its ends may take
+MUCH_WIDER = 1.5  # a closing that begins at a gap this many times close_gap is worth a warning
+TINY = 1e-6
+NO_GAP = 1e-4  # of the chord: a gap thinner than this is closed, whatever was asked
+LEAST_STRETCH = 0.5  # in element sizes: no closing is shorter, and none leaves a shorter stretch before a fixed row
 
 
 @dataclass(frozen=True)
@@ -67,9 +71,9 @@ def find_open_spans(
     gap = trailing_gap(surface, z)
     spans: list[OpenSpan] = []
     warnings: list[str] = []
-    for part in _open_parts(z, gap - close_gap):
-        root, root_apex = _closing(part.root, -1.0, part.room_before, size, fixed)
-        tip, tip_apex = _closing(part.tip, 1.0, part.room_after, size, fixed)
+    for part in _open_parts(z, gap - np.maximum(close_gap, NO_GAP * surface.chord(z))):
+        root, root_apex = _closing(part, -1.0, size, fixed)
+        tip, tip_apex = _closing(part, 1.0, size, fixed)
         if tip - root < LEAST_STRETCH * size:
             largest = gap[(z >= part.root) & (z <= part.tip)].max(initial=close_gap)
             warnings.append(
@@ -77,14 +81,44 @@ def find_open_spans(
                 " open over less than an element row, and was closed"
             )
             continue
-        if root_apex is None and part.room_before > 0.0:
-            root = part.root - part.room_before
-            warnings.append(_no_room(root, part.root))
-        if tip_apex is None and part.room_after > 0.0:
-            tip = part.tip + part.room_after
-            warnings.append(_no_room(part.tip, tip))
         spans.append(OpenSpan(root, tip, root_apex, tip_apex))
+        for start, apex in ((root, root_apex), (tip, tip_apex)):
+            wide = float(trailing_gap(surface, np.array([start]))[0])
+            if apex is not None and wide > MUCH_WIDER * max(close_gap, NO_GAP * float(surface.chord(start))):
+                warnings.append(
+                    f"trailing edge: between z = {min(start, apex):.3f} and {max(start, apex):.3f} m it closes from a"
+                    f" gap of {wide:.4f} m, for want of room where the gap is under close_gap"
+                )
     return tuple(spans), tuple(warnings)
+
+
+def closing_pull(surface: Surface, z: Floats, closing: Floats) -> Floats:
+    """How far the suction trailing edge is moved to close the gap; the pressure one is moved against it.
+
+    Where a gap closes, it shrinks in proportion from its full width at the open end to nothing at the apex, whatever
+    the surface's own gap does there, so that no element of the trailing base is left without width.
+
+    Parameters
+    ----------
+    surface : Surface
+    z : (m,) float array, m
+        Increasing.
+    closing : (m,) float array
+        0 open, 1 closed, between them where the gap closes.
+
+    Returns
+    -------
+    (m, 3) float array, m
+    """
+    across = surface.points(z, np.ones_like(z)) - surface.points(z, -np.ones_like(z))
+    wanted = across * (closing == 0.0)[:, None]
+    is_open = np.flatnonzero(closing == 0.0)
+    between = np.flatnonzero((closing > 0.0) & (closing < 1.0))
+    if len(between):
+        # the nearest open level is the end at which the closing begins
+        begin = is_open[np.argmin(np.abs(is_open[:, None] - between), axis=0)]
+        wanted[between] = across[begin] * (1.0 - closing[between])[:, None]
+    return np.asarray(0.5 * (wanted - across))
 
 
 @dataclass(frozen=True)
@@ -114,25 +148,25 @@ def _open_parts(z: Floats, excess: Floats) -> list[_OpenPart]:
     return parts
 
 
-def _no_room(root: float, tip: float) -> str:
-    return (
-        f"trailing edge: from z = {root:.3f} to {tip:.3f} m the gap is under close_gap, but the stretch is too short to"
-        " close it; it stays open"
-    )
+def _closing(part: _OpenPart, sense: float, size: float, fixed: Floats) -> tuple[float, float | None]:
+    """Where the closing at one end of an open part begins and where its apex lies, with no fixed row between.
 
-
-def _closing(edge: float, sense: float, free: float, size: float, fixed: Floats) -> tuple[float, float | None]:
-    """Where the closing beyond an edge begins and where its apex lies, between two fixed rows."""
-    length = min(CLOSING_LENGTH * size, free)
-    if length < LEAST_STRETCH * size:
-        return edge, None
-    ahead = np.sort((fixed - edge) * sense)
-    ahead = ahead[(ahead > 1e-9) & (ahead <= free + 1e-9)]
-    near = ahead[ahead < 1.5 * length]
-    if len(near) == 0:
-        return edge, edge + sense * length
-    if near[0] >= LEAST_STRETCH * size:
-        return edge, edge + sense * float(near[0])
-    # too near: the gap stays open up to that row, and closes beyond it
-    begin = edge + sense * float(near[0])
-    return _closing(begin, sense, free - float(near[0]), size, fixed)
+    Distances are counted from the end outwards: the gap is open at negative ones. The closing takes its length beyond
+    the end where there is room, and otherwise from the open part.
+    """
+    end, room = (part.tip, part.room_after) if sense > 0.0 else (part.root, part.room_before)
+    if room == 0.0:
+        return end, None
+    length, least, inside = CLOSING_LENGTH * size, LEAST_STRETCH * size, INSIDE_SHARE * (part.tip - part.root)
+    rows = (fixed - end) * sense
+    inner = float(np.max(rows[rows <= TINY * size], initial=-np.inf))  # nearest fixed row on the open side
+    start = inner if inner > -min(least, inside) else 0.0
+    outer = min(room, float(np.min(rows[rows > start + TINY * size], initial=np.inf)))
+    if outer - start >= least:
+        apex = outer if outer < start + length + least else start + length
+    else:
+        apex = outer
+        start = max(apex - length, -inside, inner)
+        if start - inner < least:
+            start = inner
+    return end + sense * start, end + sense * apex

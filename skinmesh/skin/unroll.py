@@ -13,7 +13,7 @@ from skinmesh.skin.rows import Rows, join_rows
 from skinmesh.skin.ruler import measure_sections
 from skinmesh.skin.seams import SeamTable, place_seams
 from skinmesh.skin.skinmap import BaseSpan, SkinMap, Strip, WebSheet
-from skinmesh.skin.trailing import OpenSpan, find_open_spans, trailing_gap
+from skinmesh.skin.trailing import OpenSpan, closing_pull, find_open_spans, trailing_gap
 from skinmesh.surface.loft import Surface
 
 Floats = NDArray[np.float64]
@@ -73,7 +73,9 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
         Strip("trailing base", 0, "base"),
         *(Strip(web.name, 0, "web") for web in blade.layout.webs),
     )
-    skin = SkinMap(surface, rows, levels, seams, gaps, webs, bases, n_base, _closing(rows, bases, levels.row), strips)
+    closing = _closing(rows, bases, levels.row)
+    pull = closing_pull(surface, levels.z, closing)
+    skin = SkinMap(surface, rows, levels, seams, gaps, webs, bases, n_base, closing, pull, strips)
     return skin, (*warnings, *seam_warnings)
 
 

@@ -10,7 +10,7 @@ from scipy.interpolate import PchipInterpolator
 
 from skinmesh.definition.blade import COUNTER_CLOCKWISE, BladeDefinition
 from skinmesh.frozen import freeze_array
-from skinmesh.surface.stations import StationShapes, shape_stations
+from skinmesh.surface.stations import StationShapes, shape_stations, without_gaps
 
 Complex = NDArray[np.complex128]
 Floats = NDArray[np.float64]
@@ -33,9 +33,11 @@ class Surface:
     knots : (2,) tuple of (n,) float array
         Knots in |t| of the pressure and of the suction side.
     pieces : (2,) tuple of (j − 1, n − 1, 4, 4) complex array
-        Power coefficients of the unit shape: interval along z, interval along |t|, power of z, power of |t|.
+        Power coefficients of the unit shape with its trailing edge closed: interval along z, interval along |t|, power
+        of z, power of |t|.
     planform : PchipInterpolator
-        Chord, twist, pitch axis, prebend, sweep, origin and scale (complex, two columns each) along z.
+        Chord, twist, pitch axis, prebend, sweep, and, complex in two columns each, origin and scale of the chord frame
+        and the trailing gap in it, along z.
     is_mirrored : bool
         Counter-clockwise blade.
 
@@ -173,12 +175,17 @@ class Surface:
                 by_t[own] = sign * (rate[:, 0] + w * (rate[:, 1] + w * (rate[:, 2] + w * rate[:, 3])))
         values = self.planform(z)
         chord, pitch = values[:, 0], values[:, 2]
-        origin, scale = values[:, 5] + 1j * values[:, 6], values[:, 7] + 1j * values[:, 8]
+        origin, scale, gap = (values[:, i] + 1j * values[:, i + 1] for i in (5, 7, 9))
+        half_gap = np.where(t < 0.0, -0.5, 0.5) * gap
+        closed = shape.real.copy()
+        shape += half_gap * closed
         unit = origin + scale * shape - pitch
         if not derivatives:
             return (chord * unit,)
         rates = self.planform(z, 1)
-        origin_rate, scale_rate = rates[:, 5] + 1j * rates[:, 6], rates[:, 7] + 1j * rates[:, 8]
+        origin_rate, scale_rate, gap_rate = (rates[:, i] + 1j * rates[:, i + 1] for i in (5, 7, 9))
+        by_t += half_gap * by_t.real
+        by_z += half_gap * by_z.real + np.where(t < 0.0, -0.5, 0.5) * gap_rate * closed
         unit_rate = origin_rate + scale_rate * shape + scale * by_z - rates[:, 2]
         return chord * unit, chord * scale * by_t, rates[:, 0] * unit + chord * unit_rate
 
@@ -199,7 +206,9 @@ def loft_surface(blade: BladeDefinition) -> Surface:
     """
     table = blade.stations
     shapes = shape_stations(table, blade.profiles)
-    frame = PchipInterpolator(shapes.z, np.column_stack([shapes.frame.real, shapes.frame.imag])[:, [0, 2, 1, 3]])
+    shapes, gap = without_gaps(shapes)
+    pairs = [part for column in (*shapes.frame.T, gap) for part in (column.real, column.imag)]
+    frame = PchipInterpolator(shapes.z, np.column_stack(pairs))
     columns = [table.chord, table.twist, table.pitch_axis, table.prebend, table.sweep]
     planform = PchipInterpolator(table.z, np.column_stack([*columns, frame(table.z)]))
     slopes = _shape_slopes(shapes)

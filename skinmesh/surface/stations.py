@@ -99,6 +99,32 @@ def shape_stations(table: StationTable, profiles: Mapping[str, Profile]) -> Stat
     return _with_blends(known, table, blank) if blank else known
 
 
+def without_gaps(shapes: StationShapes) -> tuple[StationShapes, Complex]:
+    """Close the trailing edges of all shapes, and say how wide each was.
+
+    What is taken away grows linearly along the chord from the leading edge, so that the nose stays as it is. The gaps
+    can then be interpolated on their own, and no blend of shapes can turn its trailing edges round.
+
+    Parameters
+    ----------
+    shapes : StationShapes
+
+    Returns
+    -------
+    StationShapes
+        Every side ends at 1 in the chord frame.
+    (j,) complex array
+        From the pressure to the suction trailing edge, in the chord frame.
+    """
+    pressure, suction = shapes.control
+    gap = suction[:, -1] - pressure[:, -1]
+    closed = tuple(
+        side - sign * 0.5 * gap[:, None] * side.real / side.real[:, -1:]
+        for sign, side in ((-1, pressure), (1, suction))
+    )
+    return replace(shapes, control=(closed[0], closed[1])), gap
+
+
 def largest_thickness(suction: Complex, pressure: Complex) -> float:
     """Largest distance of two sides across the chord line.
 
