@@ -470,6 +470,18 @@ def test_decimal_commas_are_told_once(tmp_path):
     assert "with a point (0.0)" in problem.text
 
 
+def test_a_row_with_a_decimal_comma_is_told_once(tmp_path):
+    problem = only_problem(write_blade(tmp_path, table=replaced(TABLE, "6.0, 1.2, 3", "6.0, 1,2, 3")))
+    assert (problem.line, problem.field) == (6, "")
+    assert "7 cells, the header 6; is a comma used both for decimals and between cells?" in problem.text
+
+
+def test_a_misspelt_field_is_not_also_missing(tmp_path):
+    problem = only_problem(write_blade(tmp_path, blade=replaced(BLADE, "thickness: 0.9e-3", "thicknes: 0.9e-3")))
+    assert (problem.line, problem.field) == (21, "plies[0].thicknes")
+    assert "did you mean 'thickness'?" in problem.text
+
+
 def test_a_column_full_of_mistakes_is_summed_up(tmp_path):
     rows = "".join(f"{z}, x, 0, 0.3, ring,\n" for z in range(500))
     table = "z_m, chord_m, twist_deg, pitch_axis, profile, thickness_ratio\n" + rows

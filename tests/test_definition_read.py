@@ -244,6 +244,19 @@ def test_columns_used_by_name(tmp_path, unit):
     assert width([0.0, 1.0, 2.0, 6.0, 10.0]) == pytest.approx([0.4, 0.4, 0.35, 0.2, 0.1])
 
 
+def test_a_faulty_column_is_told_only_where_it_is_used(tmp_path):
+    lines = TABLE.splitlines()
+    table = "\n".join([f"{lines[1]}, band_m", *(f"{line}, {k}x" for k, line in enumerate(lines[2:]))])
+    with pytest.raises(InputError) as unused:
+        load_blade(write_blade(tmp_path, table=table))
+    assert [(problem.line, problem.field) for problem in unused.value.problems] == [(1, "band_m")]
+    blade = replaced(BLADE, "width: [[0, 0.4], [10, 0.1]]", "width: band_m")
+    with pytest.raises(InputError) as used:
+        load_blade(write_blade(tmp_path, blade=blade, table=table))
+    assert [problem.line for problem in used.value.problems] == [2, 3, 4, 5, 6, 7]
+    assert "'0x' is not a number" in used.value.problems[0].text
+
+
 def test_prebend_and_sweep(tmp_path):
     lines = TABLE.splitlines()
     table = "\n".join([f"{lines[1]}, prebend_mm, sweep_m", *(f"{line}, {k}, " for k, line in enumerate(lines[2:]))])

@@ -133,8 +133,8 @@ def test_nothing_is_overwritten(own, name):
     (own / "mine").mkdir()
     (own / "mine" / name).write_text("precious", encoding="utf-8")
     (problem,) = refused(own / "mine", table=own / "stations.csv", profiles=own / "airfoils")
-    assert problem.file == str(own / "mine" / name)
-    assert "already" in problem.text
+    assert problem.file == str(own / "mine")
+    assert problem.text.startswith(f"{name} is there already, and nothing is overwritten")
     assert [(entry.name, entry.read_text(encoding="utf-8")) for entry in (own / "mine").iterdir()] == [
         (name, "precious")
     ]

@@ -159,15 +159,7 @@ def _key(name: str) -> str:
 def _write(files: list[_NewFile], directory: Path) -> tuple[Path, ...]:
     own = [file for file in files if file.source and _is_same(directory / file.name, file.source)]
     new = [file for file in files if file not in own]
-    findings = Findings()
-    for k, file in enumerate(new):
-        path = directory / file.name
-        if path.exists() or path.is_symlink():
-            findings.add(str(path), "is there already; nothing is overwritten: choose another folder or remove it")
-        elif file.name in {other.name for other in new[:k]}:
-            findings.add(str(path), "two files would have this name; rename one of them")
-    if findings.problems:
-        raise InputError(findings.problems)
+    _refuse_taken_names(new, directory)
     if directory.exists() and not directory.is_dir():
         raise OutputError(f"{directory}: is a file; give a folder")
     written: list[Path] = []
@@ -183,6 +175,20 @@ def _write(files: list[_NewFile], directory: Path) -> tuple[Path, ...]:
             path.unlink(missing_ok=True)
         raise OutputError(f"{error.filename or directory}: {error.strerror or error}") from error
     return tuple(written)
+
+
+def _refuse_taken_names(files: list[_NewFile], directory: Path) -> None:
+    names = [file.name for file in files]
+    taken = [name for name in names if (directory / name).exists() or (directory / name).is_symlink()]
+    twice = [name for name in dict.fromkeys(names) if names.count(name) > 1]
+    problems = [
+        Problem(str(directory), 0, "", f"two files would be named {name}; rename one of them") for name in twice
+    ]
+    if taken:
+        text = f"{', '.join(taken)} {'is' if len(taken) == 1 else 'are'} there already, and nothing is overwritten"
+        problems.append(Problem(str(directory), 0, "", f"{text}; choose another folder"))
+    if problems:
+        raise InputError(problems)
 
 
 def _is_same(path: Path, source: Path) -> bool:

@@ -94,6 +94,9 @@ class AlongReader:
         if name not in self.table.columns:
             self.report.add(path, no_such("column of the station table", name, self.table.columns))
             return None
+        if faults := self.table.column_faults.get(name):
+            self.report.findings.problems.update(dict.fromkeys(faults))
+            return None
         is_length = name.endswith(("_m", "_mm"))
         if kind == LENGTH and not is_length:
             self.report.add(

@@ -48,8 +48,11 @@ def check_fields(document: Document, report: FieldReport) -> BladeFields:
         return BladeFields.model_validate(data)
     except ValidationError as error:
         faults = error.errors(include_url=False)
+    meant = {_meant_field(tuple(fault["loc"])) for fault in faults if fault["type"] == "extra_forbidden"}
     for fault in faults:
-        _tell(fault, report)
+        # a misspelt field is told once, not also as missing
+        if fault["type"] != "missing" or tuple(fault["loc"]) not in meant:
+            _tell(fault, report)
     # extra fields first: taking them out moves nothing that another fault points at
     for fault in sorted(faults, key=lambda fault: fault["type"] != "extra_forbidden"):
         _take_out(fault["type"], tuple(fault["loc"]), data)
@@ -86,11 +89,21 @@ def _tell(fault: ErrorDetails, report: FieldReport) -> None:
         report.add(path, _fault_text(fault))
 
 
+def _meant_field(path: FieldPath) -> FieldPath | None:
+    """Path of the field that an unknown one is most like."""
+    near = nearest(str(path[-1]), _field_names(_model_at(path[:-1])))
+    return (*path[:-1], near) if near else None
+
+
+def _field_names(model: type[BaseModel] | None) -> list[str]:
+    return [field.alias or key for key, field in model.model_fields.items()] if model else []
+
+
 def _unknown_field(path: FieldPath, model: type[BaseModel] | None) -> str:
     name = str(path[-1])
     if name == "<<":
         return "merge keys belong to YAML 1.1; write the fields out, or use an alias for the whole group"
-    known = [field.alias or key for key, field in model.model_fields.items()] if model else []
+    known = _field_names(model)
     near = nearest(name, known)
     hint = f" — did you mean '{near}'?" if near else ""
     return f"there is no such field; {known_names(known)}{hint}"

@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from itertools import pairwise
 
 import numpy as np
@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from skinmesh.definition.blade import StationTable
 from skinmesh.definition.filetext import InputText
 from skinmesh.definition.problems import Findings, is_number, nearest, number_hint, shown
+from skinmesh.errors import Problem
 
 Floats = NDArray[np.float64]
 
@@ -50,6 +51,8 @@ class ReadTable:
     columns : mapping of str to (k,) float array
         Every number column by its header, in SI units; NaN where a cell is blank or wrong.
     profile : tuple of str or None
+    column_faults : mapping of str to tuple of Problem
+        What is wrong in columns that are looked at only where the blade file names them.
     is_sound : bool
         Whether nothing was wrong with it.
     """
@@ -59,6 +62,7 @@ class ReadTable:
     lines: tuple[int, ...]
     columns: Mapping[str, Floats]
     profile: tuple[str | None, ...]
+    column_faults: Mapping[str, tuple[Problem, ...]]
     is_sound: bool
 
     def quantity(self, name: str) -> Floats | None:
@@ -101,7 +105,7 @@ def read_table(source: InputText, findings: Findings) -> ReadTable | None:
     ReadTable or None
         None where there is no header to go by.
     """
-    n_before = len(findings.problems)
+    before = set(findings.problems)
     lines = [(number, _without_comment(line)) for number, line in enumerate(source.lines, start=1)]
     lines = [(number, line) for number, line in lines if line.strip(' \t,;"')]
     if not lines:
@@ -113,19 +117,21 @@ def read_table(source: InputText, findings: Findings) -> ReadTable | None:
     header = _read_header(source.file, header_line, rows[0][1], findings)
     if header is None:
         return None
-    body = _Body(source.file, header, rows[1:], findings)
-    columns = body.columns(separator)
+    body = _Body(source.file, header, rows[1:], findings, separator)
+    columns = body.columns()
     table = ReadTable(
         source.file,
         header_line,
         tuple(number for number, _ in body.rows),
         columns,
         body.profiles(),
+        {header: tuple(faults.problems) for header, faults in body.column_faults.items()},
         is_sound=False,
     )
+    if not body.n_dropped:
+        _check_length(table, findings)
     _check_stations(table, findings)
-    is_sound = len(findings.problems) == n_before
-    return ReadTable(table.file, header_line, table.lines, columns, table.profile, is_sound)
+    return replace(table, is_sound=before == set(findings.problems))
 
 
 def _without_comment(line: str) -> str:
@@ -216,16 +222,25 @@ class _Body:
     header: list[str]
     rows: list[tuple[int, list[str]]]
     findings: Findings
+    separator: str
+    column_faults: dict[str, Findings] = field(default_factory=dict)
+    n_dropped: int = 0
 
     def __post_init__(self) -> None:
         n = len(self.header)
         kept = []
         for number, cells in self.rows[:MOST_STATIONS]:
-            if any(cells[n:]):
+            if any(cells[n:]):  # which cell is too many cannot be known: none of them is looked at
+                self.n_dropped += 1
                 text = f"this row has {len(cells)} cells, the header {n}"
-                hint = "; is a comma used both for decimals and between cells?" if len(cells) > n + 1 else ""
-                self.findings.add(self.file, text + hint, line=number)
+                hint = "; is a comma used both for decimals and between cells?" if self.separator == "," else ""
+                if self.n_dropped <= MOST_CELLS:
+                    self.findings.add(self.file, text + hint, line=number)
+                continue
             kept.append((number, (cells + [""] * n)[:n]))
+        if self.n_dropped > MOST_CELLS:
+            text = f"{self.n_dropped - MOST_CELLS} further rows have more cells than the header"
+            self.findings.add(self.file, text, line=self.rows[-1][0])
         if len(self.rows) > MOST_STATIONS:
             self.findings.add(self.file, f"more than {MOST_STATIONS} stations; thin the table out")
         self.rows = kept
@@ -235,10 +250,10 @@ class _Body:
         k = self.header.index(header)
         return [cells[k] for _, cells in self.rows]
 
-    def columns(self, separator: str) -> dict[str, Floats]:
+    def columns(self) -> dict[str, Floats]:
         """Every number column in SI units."""
         headers = [header for header in dict.fromkeys(self.header) if header and header != "profile"]
-        if separator != "," and self._has_decimal_commas(headers):
+        if self.separator != "," and self._has_decimal_commas(headers):
             headers_read: dict[str, Floats] = {header: np.full(len(self.rows), np.nan) for header in headers}
             return headers_read
         z_header = next((header for header in _HEADERS["z"] if header in headers), None)
@@ -274,6 +289,7 @@ class _Body:
         quantity = _QUANTITY_OF.get(header)
         unit = next((unit for unit in _UNITS if header.endswith(unit)), "")
         is_needed = quantity in REQUIRED
+        findings = self.findings if quantity else self.column_faults.setdefault(header, Findings())
         values = np.full(len(self.rows), np.nan)
         n_faults = 0
         for row, ((number, _), text) in enumerate(zip(self.rows, self.cell_texts(header), strict=True)):
@@ -284,12 +300,12 @@ class _Body:
             n_faults += bool(told)
             if told and n_faults <= MOST_CELLS:
                 place = f"{_row_place(row, None if z is None else float(z[row]))}, {header}"
-                self.findings.add(self.file, told, place=place, line=number)
+                findings.add(self.file, told, place=place, line=number)
             elif not told:
                 values[row] = float(text) * _UNITS.get(unit, 1.0)
         if n_faults > MOST_CELLS:
             text = f"{n_faults - MOST_CELLS} further cells of this column are wrong"
-            self.findings.add(self.file, text, place=header, line=self.rows[-1][0])
+            findings.add(self.file, text, place=header, line=self.rows[-1][0])
         return values
 
 
@@ -310,12 +326,16 @@ def _row_place(row: int, z: float | None) -> str:
     return f"row {row + 1}" if z is None or np.isnan(z) else f"row {row + 1} (z_m = {z:g})"
 
 
-def _check_stations(table: ReadTable, findings: Findings) -> None:
-    """Rules on the values of each station and on their order."""
+def _check_length(table: ReadTable, findings: Findings) -> None:
     n = len(table.lines)
     if n < 2:
         rows = "has no station" if n == 0 else "has one station"
         findings.add(table.file, f"{rows} below its header; a blade needs at least two", line=table.header_line)
+
+
+def _check_stations(table: ReadTable, findings: Findings) -> None:
+    """Rules on the values of each station and on their order."""
+    n = len(table.lines)
 
     def tell(row: int, header: str, text: str) -> None:
         findings.add(table.file, text, place=f"{table.place(row)}, {header}", line=table.lines[row])
