@@ -43,13 +43,13 @@ class Limit:
 
 DEFAULT_LIMITS: Mapping[str, Limit] = {
     "aspect": Limit(5.0, 10.0, COMMON),
-    "aspect in the trailing strips": Limit(10.0, 20.0, COMMON),
+    "aspect in the edge strips": Limit(10.0, 20.0, COMMON),
     "aspect in the trailing base": Limit(20.0, float("inf"), COMMON),
     "warp": Limit(5.0, 15.0, COMMON),
     "scaled Jacobian": Limit(0.5, 0.3, COMMON),
     "smallest angle": Limit(45.0, 30.0, COMMON),
     "largest angle": Limit(135.0, 150.0, COMMON),
-    "warp in the trailing base": Limit(15.0, 60.0, OWN),
+    "warp in the trailing base": Limit(15.0, 90.0, OWN),
     "scaled Jacobian in the trailing base": Limit(0.3, 0.0, OWN),
     "smallest angle in the trailing base": Limit(30.0, 0.1, OWN),
     "largest angle in the trailing base": Limit(150.0, 179.9, OWN),

@@ -17,6 +17,7 @@ from skinmesh.mesh.shellmesh import ShellMesh
 Ints = NDArray[np.int64]
 
 SCHEDULE = "one ply schedule, region by region"
+FEW_ROWS = 2
 NO_PLIES = "the blade file has no plies"
 
 
@@ -94,7 +95,7 @@ def _missing(mesh: ShellMesh, table: SpanTable) -> Finding:
 
 
 def _doubled(mesh: ShellMesh, table: SpanTable) -> Finding:
-    """A ply that has twice the layers, or more pieces, on some rows than on the rows at both ends of them."""
+    """A ply with twice the layers on a row or two, or more pieces on some, than on the rows at both ends of them."""
     pieces = np.zeros_like(table.counts)
     number = {name: i for i, name in enumerate(table.plies)}
     for s, stack in enumerate(mesh.stacks):
@@ -112,7 +113,7 @@ def _doubled(mesh: ShellMesh, table: SpanTable) -> Finding:
     found = np.unique(np.concatenate(elements)) if elements else np.zeros(0, dtype=np.int64)
     return Finding(
         "doubled plies",
-        f"{len(places)} plies lie twice on some rows and once on both sides of them, {n_split} of these in two pieces",
+        f"{len(places)} plies lie twice on a few rows and once on both sides of them, {n_split} of these in two pieces",
         "warn 1, fail 1 in two pieces",
         SCHEDULE,
         verdict_of(fails=n_split, warns=len(places)),
@@ -123,13 +124,18 @@ def _doubled(mesh: ShellMesh, table: SpanTable) -> Finding:
 
 
 def _twice(layers: Ints, pieces: Ints) -> Iterator[slice]:
-    """Runs of rows with twice the layers, or more pieces, than the runs before and behind, which are alike."""
+    """Runs of rows with twice the layers, or more pieces, than the runs before and behind, which are alike.
+
+    Twice the layers on a long run is a ply whose count rises and falls along the span, as schedules have it.
+    """
     both = np.column_stack([layers, pieces])
     starts = np.concatenate([[0], np.flatnonzero(np.any(np.diff(both, axis=0) != 0, axis=1)) + 1, [len(both)]])
     runs = both[starts[:-1]]
     for i in range(1, len(runs) - 1):
         before, own, behind = runs[i - 1 : i + 2]
-        if np.array_equal(before, behind) and before[0] > 0 and (own[0] == 2 * before[0] or own[1] > before[1]):
+        is_short = starts[i + 1] - starts[i] <= FEW_ROWS
+        is_twice = (is_short and own[0] == 2 * before[0]) or own[1] > before[1]
+        if np.array_equal(before, behind) and before[0] > 0 and is_twice:
             yield slice(int(starts[i]), int(starts[i + 1]))
 
 

@@ -42,7 +42,7 @@ def check_quality(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Findi
     """
     corners = corner_points(mesh)
     base = np.array([region.kind == "base" for region in mesh.regions])[mesh.region]
-    strip = np.array(["trailing strip" in region.name for region in mesh.regions])[mesh.region]
+    strip = np.array([region.kind == "strip" for region in mesh.regions])[mesh.region]
     values = [("aspect", aspect_ratio(corners), "{} {:.2f} at most")]
     if mesh.n_sides == 4:
         # Verdict's warpage is the cube of the cosine between opposite corners' normals.
@@ -57,9 +57,7 @@ def check_quality(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Findi
     for name, value, text in values:
         # The base has elements of its own kind: long strips, and where it closes, the sharp ends of a wedge.
         parts = [(f"{name} in the trailing base", base)]
-        parts += (
-            [("aspect in the trailing strips", strip), (name, ~base & ~strip)] if name == "aspect" else [(name, ~base)]
-        )
+        parts += [("aspect in the edge strips", strip), (name, ~base & ~strip)] if name == "aspect" else [(name, ~base)]
         lines += [
             _line(mesh, part, value, np.flatnonzero(own), limits[part], text) for part, own in parts[::-1] if own.any()
         ]

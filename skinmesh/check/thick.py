@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -38,7 +39,7 @@ def check_folding(mesh: ShellMesh, *, limits: Mapping[str, Limit], has_mid_nodes
     if not mesh.stacks:
         return [not_made("inner face", NO_PLIES)]
     limit = limits["laminate depth over radius"]
-    depth = 1.0 - inner_face_ratio(mesh)
+    depth = 1.0 - inner_face_ratio(_laid_inwards(mesh))
     beyond = np.flatnonzero(depth > limit.warn)
     beyond = beyond[np.argsort(-depth[beyond], kind="stable")]
     n_fail = int(np.count_nonzero(depth >= limit.fail))
@@ -56,6 +57,14 @@ def check_folding(mesh: ShellMesh, *, limits: Mapping[str, Limit], has_mid_nodes
             {"depth": float(depth.max()), "fails": n_fail},
         )
     ]
+
+
+def _laid_inwards(mesh: ShellMesh) -> ShellMesh:
+    """The mesh with its laminate where it belongs: a wrong offset is for the check of offsets to name."""
+    if mesh.surface != "outer":
+        return mesh
+    is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
+    return replace(mesh, offset=np.where(is_web, 0.0, 0.5))
 
 
 def check_radius(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Finding]:
