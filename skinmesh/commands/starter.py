@@ -157,13 +157,12 @@ def _key(name: str) -> str:
 
 
 def _write(files: list[_NewFile], directory: Path) -> tuple[Path, ...]:
-    own = [file for file in files if file.source and _is_same(directory / file.name, file.source)]
-    new = [file for file in files if file not in own]
-    _refuse_taken_names(new, directory)
-    if directory.exists() and not directory.is_dir():
-        raise OutputError(f"{directory}: is a file; give a folder")
     written: list[Path] = []
     try:
+        if directory.exists() and not directory.is_dir():
+            raise OutputError(f"{directory}: is a file; give a folder")
+        new = [file for file in files if not (file.source and _is_same(directory / file.name, file.source))]
+        _refuse_taken_names(new, directory)
         directory.mkdir(parents=True, exist_ok=True)
         for file in new:
             path = directory / file.name

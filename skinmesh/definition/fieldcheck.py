@@ -7,7 +7,6 @@ from copy import deepcopy
 from typing import Any, get_args
 
 from pydantic import BaseModel, ValidationError
-from pydantic_core import ErrorDetails
 
 from skinmesh.definition.problems import FieldPath, FieldReport, known_names, nearest, number_hint, shown
 from skinmesh.definition.schema import NOT_YET, BladeFields
@@ -78,7 +77,7 @@ def _take_naca_as_written(data: dict[str, Any], document: Document) -> None:
             profile["naca"] = document.written[f"profiles.{name}.naca"]
 
 
-def _tell(fault: ErrorDetails, report: FieldReport) -> None:
+def _tell(fault: Mapping[str, Any], report: FieldReport) -> None:
     path: FieldPath = tuple(fault["loc"])
     if fault["type"] == "missing":
         what = _MISSING_EXAMPLES.get(str(path[-1]))
@@ -180,11 +179,11 @@ _TEXTS: Mapping[str, Callable[[Any, Mapping[str, Any]], str]] = {
     "too_short": _length,
     "too_long": _length,
     "literal_error": _one_of,
-    "rule": lambda _value, context: str(context["text"]),
+    "value_error": lambda _value, context: str(context["error"]),
 }
 
 
-def _fault_text(fault: ErrorDetails) -> str:
+def _fault_text(fault: Mapping[str, Any]) -> str:
     text = _TEXTS.get(fault["type"])
     return text(fault["input"], fault.get("ctx", {})) if text else f"{fault['msg']}, got {shown(fault['input'])}"
 

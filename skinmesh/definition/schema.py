@@ -13,7 +13,6 @@ from typing import Annotated, Any, Literal, cast
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, PlainValidator, WithJsonSchema
 from pydantic.json_schema import GenerateJsonSchema, JsonSchemaValue
-from pydantic_core import PydanticCustomError, core_schema
 
 from skinmesh.definition.problems import number_hint, shown
 
@@ -22,47 +21,44 @@ NOT_YET = "is not available in this version"
 _INFINITE = float("inf")
 
 
-def _refusal(text: str) -> PydanticCustomError:
-    # the text is the user's: braces in it are no placeholders
-    return PydanticCustomError("rule", "{text}", {"text": text})
-
-
 def _read_along(value: object) -> AlongValue:
     if isinstance(value, bool) or not isinstance(value, int | float | str | list):
-        raise _refusal(f"must be a number, a list of [z, value] pairs or a column of the table, got {shown(value)}")
+        raise ValueError(f"must be a number, a list of [z, value] pairs or a column of the table, got {shown(value)}")
     if isinstance(value, str):
         # a text that begins like a number is a number gone wrong, not the name of a column
         if re.match(r"[-+.]?\d", value):
-            raise _refusal(f"{shown(value)} is not a number{number_hint(value)}")
+            raise ValueError(f"{shown(value)} is not a number{number_hint(value)}")
         return value
     if not isinstance(value, list):
         return _finite(value)
     if not value:
-        raise _refusal("the list of [z, value] pairs is empty")
+        raise ValueError("the list of [z, value] pairs is empty")
     if all(isinstance(item, int | float) and not isinstance(item, bool) for item in value):
-        raise _refusal(
+        raise ValueError(
             f"must be a list of [z, value] pairs, such as [[0, 0.4], [5, 0.4], [22, 0.1]], got {shown(value)}"
         )
     pairs = [_pair(item, k) for k, item in enumerate(value, start=1)]
     for k, (before, after) in enumerate(pairwise(pairs), start=2):
         if after[0] <= before[0]:
-            raise _refusal(f"z must increase from pair to pair, but pair {k} has z = {after[0]:g} after {before[0]:g}")
+            raise ValueError(
+                f"z must increase from pair to pair, but pair {k} has z = {after[0]:g} after {before[0]:g}"
+            )
     return pairs
 
 
 def _pair(item: object, number: int) -> tuple[float, float]:
     if not isinstance(item, list) or len(item) != 2:
-        raise _refusal(f"pair {number} must be [z, value], got {shown(item)}")
+        raise ValueError(f"pair {number} must be [z, value], got {shown(item)}")
     for part in item:
         if isinstance(part, bool) or not isinstance(part, int | float):
             hint = number_hint(part) if isinstance(part, str) else ""
-            raise _refusal(f"pair {number}: {shown(part)} is not a number{hint}")
+            raise ValueError(f"pair {number}: {shown(part)} is not a number{hint}")
     return _finite(item[0], f"pair {number}: "), _finite(item[1], f"pair {number}: ")
 
 
 def _finite(value: float, place: str = "") -> float:
     if not abs(value) < _INFINITE:
-        raise _refusal(f"{place}must be a finite number, got {shown(value)}")
+        raise ValueError(f"{place}must be a finite number, got {shown(value)}")
     return float(value)
 
 
@@ -89,13 +85,13 @@ Along = Annotated[
 def _true_itself(value: object) -> object:
     # True == 1 in Python, but 1 is not true in a blade file
     if value is not True:
-        raise _refusal(f"must be true, got {shown(value)}")
+        raise ValueError(f"must be true, got {shown(value)}")
     return value
 
 
 def _no_truth(value: object) -> object:
     if isinstance(value, bool):
-        raise _refusal(f"must be 1 or 2, got {shown(value)}")
+        raise ValueError(f"must be 1 or 2, got {shown(value)}")
     return value
 
 
@@ -299,10 +295,10 @@ class BladeFields(Part):
 class _EditorSchema(GenerateJsonSchema):
     """JSON Schema of what a user writes: no field is null, and no default is nothing."""
 
-    def nullable_schema(self, schema: core_schema.NullableSchema) -> JsonSchemaValue:
+    def nullable_schema(self, schema: Any) -> JsonSchemaValue:
         return self.generate_inner(schema["schema"])
 
-    def default_schema(self, schema: core_schema.WithDefaultSchema) -> JsonSchemaValue:
+    def default_schema(self, schema: Any) -> JsonSchemaValue:
         return self.generate_inner(schema["schema"])
 
     def get_title_from_name(self, name: str) -> str:
