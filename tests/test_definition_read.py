@@ -10,7 +10,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 from blade_files import BLADE, PROFILE, TABLE, replaced, write_blade
-from hypothesis import HealthCheck, example, given, settings
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from skinmesh.definition.blade import (
@@ -19,25 +19,18 @@ from skinmesh.definition.blade import (
     AcrossCap,
     ArcLength,
     BladeDefinition,
-    CapRule,
     ChordFraction,
     CircleProfile,
     FileProfile,
     FromAxis,
-    Layout,
     NacaProfile,
-    Place,
-    WebRule,
 )
 from skinmesh.definition.filetext import read_text
-from skinmesh.definition.names import cover_names, region_names, resolve_cover
 from skinmesh.definition.problems import Findings
 from skinmesh.definition.read import load_blade
 from skinmesh.definition.schema import json_schema
-from skinmesh.definition.spanwise import constant
-from skinmesh.definition.table import read_table
 from skinmesh.definition.yamltree import read_document
-from skinmesh.errors import InputError, Problem
+from skinmesh.errors import InputError
 from skinmesh.laminate.material import Material
 
 EXAMPLES = sorted((Path(__file__).parents[1] / "examples").glob("*/*.yaml"))
@@ -319,91 +312,6 @@ def test_only_stable_materials_pass(tmp_path_factory, ratio, nu12):
     assert np.linalg.eigvalsh(compliance).min() > 0
 
 
-# ----------------------------------------------------------------------------------------------------- names
-
-
-def cap(name: str, sides: tuple[int, ...] = (SUCTION, PRESSURE)) -> CapRule:
-    return CapRule(name, FromAxis(constant(0.0)), constant(0.1), sides)
-
-
-def web(name: str) -> WebRule:
-    foot: Place = ChordFraction(constant(0.3))
-    return WebRule(name, {SUCTION: foot, PRESSURE: foot}, (0.0, 1.0))
-
-
-LAYOUT = Layout((cap("a"), cap("b", (SUCTION,)), cap("c", (SUCTION,))), (web("w"),), constant(0.1), constant(0.1))
-
-
-def test_region_names_from_leading_to_trailing_edge():
-    assert [region.full for region in region_names(LAYOUT)] == [
-        "suction leading strip",
-        "suction leading panel",
-        "suction a",
-        "suction middle panel 1",
-        "suction b",
-        "suction middle panel 2",
-        "suction c",
-        "suction trailing panel",
-        "suction trailing strip",
-        "pressure leading strip",
-        "pressure leading panel",
-        "pressure a",
-        "pressure trailing panel",
-        "pressure trailing strip",
-        "trailing base",
-        "w",
-    ]
-
-
-def test_two_caps_have_one_middle_panel():
-    assert "suction middle panel" in {region.full for region in region_names(Layout((cap("a"), cap("b"))))}
-
-
-@pytest.mark.parametrize(
-    ("name", "found"),
-    [
-        ("a", {"suction a", "pressure a"}),
-        ("b", {"suction b"}),
-        ("suction a", {"suction a"}),
-        ("w", {"w"}),
-        ("webs", {"w"}),
-        ("trailing base", {"trailing base"}),
-        ("caps", {"suction a", "suction b", "suction c", "pressure a"}),
-        ("leading strip", {"suction leading strip", "pressure leading strip"}),
-    ],
-)
-def test_what_names_stand_for(name, found):
-    assert resolve_cover(name, LAYOUT) == found
-
-
-def test_groups_of_regions():
-    everything = {region.full for region in region_names(LAYOUT)}
-    assert resolve_cover("all", LAYOUT) == everything
-    assert resolve_cover("skin", LAYOUT) == everything - {"w"}
-    parts = [resolve_cover(name, LAYOUT) for name in ("panels", "caps", "strips", "webs", "trailing base")]
-    assert frozenset().union(*parts) == everything
-    assert sum(map(len, parts)) == len(everything)
-    sides = resolve_cover("suction", LAYOUT) | resolve_cover("pressure", LAYOUT)
-    assert sides == everything - {"w", "trailing base"}
-
-
-def test_unknown_and_empty_names():
-    with pytest.raises(KeyError, match="leading strip"):
-        resolve_cover("leading strip", Layout())
-    assert resolve_cover("webs", Layout()) == frozenset()
-    for name in cover_names(LAYOUT):
-        assert resolve_cover(name, LAYOUT)
-
-
-def test_across_the_nearer_name_wins(tmp_path):
-    across = "across: {suction main cap: 8, main cap: 6, skin: 2, webs: 5}"
-    mesh = load_blade(write_blade(tmp_path, blade=replaced(BLADE, "across: {main cap: 6}", across))).mesh
-    assert mesh.across["suction main cap"] == 8
-    assert mesh.across["pressure main cap"] == 6
-    assert mesh.across["suction leading panel"] == 2
-    assert mesh.across["fore web"] == 5
-
-
 # --------------------------------------------------------------------------------------------------- JSON Schema
 
 
@@ -434,190 +342,6 @@ def test_json_schema_knows_the_fields_of_the_contract():
     assert len(fields) > 50
     assert all(field.get("description") for field in fields)
     assert '"null"' not in json.dumps(schema)
-
-
-# --------------------------------------------------------------------------------------------- nothing unforeseen
-
-WORDS = st.sampled_from(
-    [
-        "a",
-        "title",
-        "plies",
-        "mesh",
-        "profiles",
-        "layout",
-        "caps",
-        "{",
-        "}",
-        "[",
-        "]",
-        ":",
-        ": ",
-        "- ",
-        "&a ",
-        "*a",
-        "!!int ",
-        "!x ",
-        "|",
-        ">",
-        "'",
-        '"',
-        "\n",
-        "\n  ",
-        "\n\n",
-        "#",
-        "1e9",
-        ".5",
-        "-",
-        ",",
-        "\t",
-        "\u00e9",
-        "\x85",
-        "null",
-        "true",
-        "?",
-        "%",
-        "@",
-        "`",
-        "circle",
-        "across",
-        "centre",
-        "width",
-        "covers",
-        "planform",
-        "table.csv",
-    ]
-)
-TEXTS = st.one_of(st.text(max_size=200), st.lists(WORDS, max_size=40).map("".join))
-
-
-def refused_or_read(path: Path) -> None:
-    """A blade, or reasons that can be shown; anything else is an error of the test."""
-    problems: tuple[Problem, ...] = ()
-    try:
-        load_blade(path)
-    except InputError as error:
-        problems = error.problems or (Problem("", -1, "", ""),)
-    assert all(problem.text and problem.line >= 0 for problem in problems)
-
-
-@given(text=TEXTS)
-@example(text="a: 2001-12-14t21:59:43.10-05:00")
-@example(text='planform: "a\\0b"\nprofiles: {}')
-@example(text="planform: " + "x" * 300 + "\nprofiles: {a: {file: " + "x" * 300 + "}}")
-@example(text="profiles: {a: {naca: [1]}}\nplies: {0: 1}")
-@example(text="mesh: {size: [[0, 1], [1]]}")
-@settings(derandomize=True, deadline=None, max_examples=250, suppress_health_check=list(HealthCheck))
-def test_random_blade_files(tmp_path_factory, text):
-    folder = tmp_path_factory.mktemp("random")
-    path = write_blade(folder)
-    path.write_bytes(text.encode("utf-8", errors="surrogatepass"))
-    refused_or_read(path)
-
-
-@given(data=st.binary(max_size=120), name=st.sampled_from(["blade.yaml", "table.csv", "thick.dat"]))
-@settings(derandomize=True, deadline=None, max_examples=100, suppress_health_check=list(HealthCheck))
-def test_random_bytes(tmp_path_factory, data, name):
-    path = write_blade(tmp_path_factory.mktemp("random"))
-    (path.parent / name).write_bytes(data)
-    refused_or_read(path)
-
-
-VALUES = st.recursive(
-    st.one_of(
-        st.none(), st.booleans(), st.integers(-3, 30), st.floats(), st.sampled_from(["skin", "chord_m", "x", "1,5"])
-    ),
-    lambda inner: st.one_of(
-        st.lists(inner, max_size=3), st.dictionaries(st.sampled_from(["cap", "root", "E", "a"]), inner, max_size=2)
-    ),
-    max_leaves=5,
-)
-PLACES = [
-    "clockwise",
-    "table.csv",
-    "{circle: true}",
-    "thick.dat",
-    "41.0e9",
-    "80",
-    "{from_axis: 0.0}",
-    "[[0, 0.4], [10, 0.1]]",
-    "{cap: main cap, across: 0.2}",
-    "[1.0, 9.0]",
-    "{suction: {chord: 0.6}, pressure: {arc: 0.7}}",
-    "0.9e-3",
-    "45",
-    "[skin]",
-    "[0.4, 9.5]",
-    "{root: 0.1}",
-    "0.12",
-    "{main cap: 6}",
-    "0.004\n",
-]
-
-
-@given(place=st.sampled_from(PLACES), value=VALUES)
-@settings(derandomize=True, deadline=None, max_examples=300, suppress_health_check=list(HealthCheck))
-def test_any_value_in_any_field(tmp_path_factory, place, value):
-    text = json.dumps(value).replace("NaN", ".nan").replace("Infinity", ".inf")
-    head, found, tail = BLADE.partition(place)
-    assert found
-    path = write_blade(
-        tmp_path_factory.mktemp("random"), blade=f"{head}{text}\n{tail}" if "\n" in place else head + text + tail
-    )
-    refused_or_read(path)
-
-
-CELLS = st.sampled_from(
-    [
-        "z_m",
-        "chord_m",
-        "twist_deg",
-        "pitch_axis",
-        "profile",
-        "0",
-        "1",
-        "-1",
-        "1e400",
-        "nan",
-        "ring",
-        "",
-        '"',
-        "#",
-        ",",
-        ";",
-        "\t",
-        "\n",
-        "\r\n",
-        "1,5",
-        "x",
-        "\ufeff",
-    ]
-)
-
-
-@given(cells=st.lists(CELLS, max_size=60))
-@settings(derandomize=True, deadline=None, max_examples=200, suppress_health_check=list(HealthCheck))
-def test_random_tables(tmp_path_factory, cells):
-    path = tmp_path_factory.mktemp("random") / "table.csv"
-    path.write_text(",".join(cells), encoding="utf-8", newline="")
-    findings = Findings()
-    source = read_text(path, "table.csv", findings=findings, kind="station table")
-    table = read_table(source, findings) if source else None
-    assert findings.problems or (table is not None and table.is_sound)
-
-
-@given(
-    lines=st.lists(
-        st.sampled_from(
-            ["1 0", "0 0", "0.5 0.1", "0.5 -0.1", "5 5", "nan 0", "title", "", "1 2 3", "1,0 2,0", "1e999 0"]
-        ),
-        max_size=30,
-    )
-)
-@settings(derandomize=True, deadline=None, max_examples=200, suppress_health_check=list(HealthCheck))
-def test_random_profiles(tmp_path_factory, lines):
-    path = write_blade(tmp_path_factory.mktemp("random"), profile="\n".join(lines))
-    refused_or_read(path)
 
 
 def test_reading_leaves_nothing_behind(tmp_path):

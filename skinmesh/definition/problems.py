@@ -66,6 +66,20 @@ class FieldReport:
             for problem in self.findings.problems
         )
 
+    def is_whole(self, part: str, *, depth: int = 0) -> bool:
+        """Whether a top-level part was read under its own name, so that what it does not hold is truly not there.
+
+        Parameters
+        ----------
+        part : str
+        depth : int
+            1 where a mistake in a field of the part, too, may have taken names away.
+        """
+        own = [problem.field for problem in self.findings.problems if problem.file == self.file]
+        lost = [name for name in own if name.count(".") <= depth and (name == part or name.startswith(f"{part}."))]
+        misspelt = [name for name in own if "." not in name and name != part and nearest(name, [part])]
+        return not lost and not misspelt
+
 
 def field_name(path: FieldPath) -> str:
     """Write the path of a field as messages name it.

@@ -76,7 +76,7 @@ def _ply(
     if thickness is not None and table is not None:
         _check_thickness(thickness, (*path, "thickness"), table, report)
     count = along.read(ply.count, (*path, "count"), kind=RATIO, bounds=_LAYERS)
-    if ply.material is not None and ply.material not in materials:
+    if ply.material is not None and ply.material not in materials and report.is_whole("materials"):
         report.add((*path, "material"), no_such("material", ply.material, materials))
     for k, name in enumerate(ply.covers or ()):
         _check_cover(name, layout, (*path, "covers"), report)
@@ -103,9 +103,10 @@ def _check_cover(name: str, layout: Layout, path: FieldPath, report: FieldReport
     try:
         is_empty = not resolve_cover(name, layout)
     except KeyError:
-        report.add(path, no_such("region", name, cover_names(layout)))
+        if report.is_whole("layout", depth=1):
+            report.add(path, no_such("region", name, cover_names(layout)))
         return
-    if is_empty:
+    if is_empty and report.is_whole("layout", depth=1):
         report.add(path, f"the layout has no {name}, so {shown(name)} covers nothing")
 
 
@@ -168,7 +169,7 @@ def _across(wanted: Mapping[str, int], layout: Layout, path: FieldPath, report: 
         ranked.append((0 if name in GROUPS else 2 if name in full else 1, name))
     across: dict[str, int] = {}
     for _, name in sorted(ranked, key=lambda entry: entry[0]):
-        if name in GROUPS or not report.has((*path, name)):
+        if name in cover_names(layout):
             across |= dict.fromkeys(sorted(resolve_cover(name, layout)), wanted[name])
     return across
 
