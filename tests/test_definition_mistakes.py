@@ -72,7 +72,7 @@ IN_BLADE = [
     wrong("size: 0.12", "size: 1_0", 29, "mesh.size", "'1_0' is not a number", "without anything between"),
     wrong("size: 0.12", "size: .inf", 29, "mesh.size", "must be a finite number, got inf"),
     wrong("size: 0.12", "size: chrod_m", 29, "mesh.size", "no column", "'chrod_m'", "did you mean 'chord_m'?"),
-    wrong("size: 0.12", "size: pitch_axis", 29, "mesh.size", "is a length", "_m"),
+    wrong("size: 0.12", "size: pitch_axis", 29, "mesh.size", "is a length", "carries no unit", "end in _m or _mm"),
     wrong("across: {main cap: 6}", "across: {spar cap: 6}", 30, "mesh.across.spar cap", "no region", "'main cap'?"),
     wrong("across: {main cap: 6}", "across: {main cap: 0}", 30, "mesh.across.main cap", "must be ≥ 1, got 0"),
     wrong("across: {main cap: 6}", "across: {main cap: 2.5}", 30, "mesh.across.main cap", "whole number, got 2.5"),
@@ -258,7 +258,7 @@ IN_TABLE = [
     wrong(
         "3.0, 1.6, 8", "3.0, 1.6 m, 8", 5, "row 3 (z_m = 3), chord_m", "'1.6 m' is not a number", "leave the unit out"
     ),
-    wrong("3.0, 1.6, 8", "0.5, 1.6, 8", 5, "row 3 (z_m = 0.5), z_m", "z must increase", "it follows 1"),
+    wrong("3.0, 1.6, 8", "0.5, 1.6, 8", 5, "row 3 (z_m = 0.5), z_m", "z must increase", "got 0.5 after 1"),
     wrong("3.0, 1.6, 8", "1.0, 1.6, 8", 5, "row 3 (z_m = 1), z_m", "z must increase"),
     wrong(
         "0.0, 1.0, 12, 0.5, ring,", "-0.5, 1.0, 12, 0.5, ring,", 3, "row 1 (z_m = -0.5), z_m", "0 or above, got -0.5"

@@ -92,16 +92,15 @@ class AlongReader:
         if self.table is None:
             return None
         if name not in self.table.columns:
-            self.report.add(path, no_such("column of the station table", name, self.table.columns))
+            self.report.add(path, no_such("column", name, self.table.columns))
             return None
         if faults := self.table.column_faults.get(name):
             self.report.findings.problems.update(dict.fromkeys(faults))
             return None
         is_length = name.endswith(("_m", "_mm"))
         if kind == LENGTH and not is_length:
-            self.report.add(
-                path, f"is a length: name a column whose name carries its unit, {name}_m or {name}_mm, in the table too"
-            )
+            text = f"is a length, but the column '{name}' carries no unit of length; its name must end in _m or _mm"
+            self.report.add(path, text)
             return None
         if kind == RATIO and (is_length or name.endswith("_deg")):
             self.report.add(path, f"is a number without a unit, but the column '{name}' carries one")

@@ -84,7 +84,9 @@ def _check_choice(given: Mapping[str, float], path: FieldPath, report: FieldRepo
     missing = [key for key in wanted if key not in (isotropic or orthotropic)]
     if missing:
         kind = "an isotropic" if isotropic else "an orthotropic"
-        report.add(path, f"is {kind} material without {', '.join(missing)}")
+        report.add(
+            path, f"is {kind} material without {', '.join(missing)}; give {'it' if len(missing) == 1 else 'them'}"
+        )
 
 
 def _isotropic_constants(given: Mapping[str, float]) -> dict[str, float]:

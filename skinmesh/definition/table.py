@@ -350,7 +350,7 @@ def _check_stations(table: ReadTable, findings: Findings) -> None:
         known = np.flatnonzero(~np.isnan(z)).tolist()
         for before, row in pairwise(known):
             if z[row] <= z[before]:
-                tell(row, z_header, f"z must increase from row to row, root first; it follows {z[before]:g}")
+                tell(row, z_header, f"z must increase from row to row, root first; got {z[row]:g} after {z[before]:g}")
         if len(known) and z[known[0]] < 0:
             tell(known[0], z_header, f"z must start at 0 or above, got {z[known[0]]:g}")
     if "profile" in _named_columns(table) and n:
