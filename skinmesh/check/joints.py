@@ -135,7 +135,8 @@ def _edge_lines(mesh: ShellMesh) -> tuple[NDArray[np.float64], NDArray[np.float6
         return None
     lines = []
     for seam in (labels.index("leading edge"), 0):
-        nodes = np.flatnonzero((mesh.sheet == 0) & (mesh.seam == float(seam)))
+        corners = slice(mesh.n_corners)
+        nodes = np.flatnonzero((mesh.sheet[corners] == 0) & (mesh.seam[corners] == float(seam)))
         if not len(nodes):
             return None
         lines.append(mesh.points[nodes[np.argsort(mesh.points[nodes, 2], kind="stable")]])

@@ -49,6 +49,8 @@ DEFAULT_LIMITS: Mapping[str, Limit] = {
     "scaled Jacobian": Limit(0.5, 0.3, COMMON),
     "smallest angle": Limit(45.0, 30.0, COMMON),
     "largest angle": Limit(135.0, 150.0, COMMON),
+    "scaled Jacobian of triangles": Limit(0.2, 0.1, f"{OWN}: half a rectangle of aspect 5 and 10"),
+    "smallest angle of triangles": Limit(11.0, 5.5, f"{OWN}: half a rectangle of aspect 5 and 10"),
     "warp in the trailing base": Limit(15.0, 90.0, OWN),
     "scaled Jacobian in the trailing base": Limit(0.3, 0.0, OWN),
     "smallest angle in the trailing base": Limit(30.0, 0.1, OWN),

@@ -93,7 +93,8 @@ def _station(mesh: ShellMesh, k: int, limit: Limit) -> tuple[dict[str, Any], Int
     row, elements = at
     upper, lower = (_ring(mesh, elements[mesh.side[elements] == side], row) for side in (1, -1))
     nose = float(mesh.report.seams.index("leading edge"))
-    on_row = np.flatnonzero((mesh.sheet == 0) & (mesh.row == row))
+    corners = slice(mesh.n_corners)
+    on_row = np.flatnonzero((mesh.sheet[corners] == 0) & (mesh.row[corners] == row))
     front = mesh.points[on_row[mesh.seam[on_row] == nose], :2]
     back = mesh.points[on_row[(mesh.seam[on_row] <= 0) | (mesh.seam[on_row] == len(mesh.report.seams) - 1)], :2]
     if not (len(front) and len(back) and len(upper.start) and len(lower.start)):

@@ -29,10 +29,10 @@ from skinmesh.check.thick import check_folding, check_radius
 from skinmesh.check.totals import check_files, check_inputs, check_mass
 from skinmesh.errors import OutputError
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
+from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
 
 Progress = Callable[[str, float], None]
 
-CHECKS_FILE, SETS_FILE = "checks.json", "checks.inp"
 MOST_LISTED = 100
 """Elements of one line in the JSON file; the file of sets has them all."""
 
@@ -171,7 +171,7 @@ def checks_json(report: CheckReport) -> str:
         "caution": " ".join(CAUTION),
         "passed": not report.has_failed,
         "counts": report.counts,
-        "element_set_file": f"{mesh.stem}.{SETS_FILE}",
+        "element_set_file": f"{mesh.stem}.{CHECK_SETS_FILE}",
         "findings": [
             {
                 "check": finding.check,
@@ -228,7 +228,7 @@ def write_checks(report: CheckReport) -> tuple[Path, Path]:
     OutputError
         A file cannot be written; what was there before is there still.
     """
-    paths = report.built.file(CHECKS_FILE), report.built.file(SETS_FILE)
+    paths = report.built.file(CHECKS_FILE), report.built.file(CHECK_SETS_FILE)
     for path, text in zip(paths, (checks_json(report), sets_text(report)), strict=True):
         unfinished = path.with_name(f".{path.name}.unfinished")
         try:

@@ -43,20 +43,21 @@ def check_quality(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Findi
     corners = corner_points(mesh)
     base = np.array([region.kind == "base" for region in mesh.regions])[mesh.region]
     strip = np.array([region.kind == "strip" for region in mesh.regions])[mesh.region]
+    of_triangles = "" if mesh.n_sides == 4 else " of triangles"
     values = [("aspect", aspect_ratio(corners), "{} {:.2f} at most")]
     if mesh.n_sides == 4:
         # Verdict's warpage is the cube of the cosine between opposite corners' normals.
         warp = np.degrees(np.arccos(np.clip(np.cbrt(warpage(corners)), -1.0, 1.0)))
         values.append(("warp", warp, "{} {:.1f}° at most"))
     values += [
-        ("scaled Jacobian", scaled_jacobian(corners), "{} {:.3f} at least"),
-        ("smallest angle", np.degrees(smallest_angle(corners)), "{} {:.1f}° at least"),
+        (f"scaled Jacobian{of_triangles}", scaled_jacobian(corners), "{} {:.3f} at least"),
+        (f"smallest angle{of_triangles}", np.degrees(smallest_angle(corners)), "{} {:.1f}° at least"),
         ("largest angle", np.degrees(largest_angle(corners)), "{} {:.1f}° at most"),
     ]
     lines = []
     for name, value, text in values:
         # The base has elements of its own kind: long strips, and where it closes, the sharp ends of a wedge.
-        parts = [(f"{name} in the trailing base", base)]
+        parts = [(f"{name.removesuffix(of_triangles)} in the trailing base", base)]
         parts += [("aspect in the edge strips", strip), (name, ~base & ~strip)] if name == "aspect" else [(name, ~base)]
         lines += [
             _line(mesh, part, value, np.flatnonzero(own), limits[part], text) for part, own in parts[::-1] if own.any()

@@ -20,6 +20,8 @@ for _module in pkgutil.iter_modules([str(Path(__file__).parent / "formats")]):
     importlib.import_module(f"skinmesh.write.formats.{_module.name}")
 
 DEFAULT_FORMATS = ("vtu", "msh", "inp", "bdf")
+CHECKS_FILE, CHECK_SETS_FILE = "checks.json", "checks.inp"
+"""What a check of the mesh writes beside it; of an earlier mesh they are removed, for they would speak of another."""
 
 
 @dataclass(frozen=True)
@@ -81,7 +83,7 @@ def write(
     wanted = _known_formats(formats)
     directory = Path(directory)
     extras = extras or {}
-    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, *extras)}
+    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, CHECKS_FILE, CHECK_SETS_FILE, *extras)}
     try:
         with new_files(directory, is_own=own.__contains__) as stage:
             writers = {name: FORMATS[name].write for name in wanted}
