@@ -20,7 +20,7 @@ from skinmesh.skin.skinmap import SkinMap
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
-N_PIECES, N_GAUSS = 8, 4  # samples along every strip: pieces × Gauss points in each
+N_PIECES, N_GAUSS = 8, 5  # samples along every strip: pieces × Gauss points in each
 SLOPE_STEP = 1e-5  # of the span, for the slope of lines along the blade
 OUTER_FACE = 0.5  # the loft is the +e3 face of the skin's laminate; a web lies about its middle
 CLOSED = 1e-9  # m; trailing edges nearer than this are one
@@ -85,13 +85,13 @@ def exact_walls(blade: BladeDefinition, skin: SkinMap, z: Floats) -> tuple[Walls
     laid = lay_strips(blade, skin, z)
     frames = _place_seams(blade, skin, z)
     n_gaps = skin.n_seams - 1
-    line, cosine = _skin_lines(skin, z, frames)
+    line, rate, cosine = _skin_lines(skin, z, frames)
     pairs = [(n_gaps, 0), *((web.pressure_seam, web.suction_seam) for web in skin.webs)]
-    straight, flat_cosine = _straight_lines(frames, pairs)
-    line, cosine = np.concatenate([line, straight], axis=1), np.concatenate([cosine, flat_cosine], axis=1)
+    lines = zip((line, rate, cosine), _straight_lines(frames, pairs), strict=True)
+    line, rate, cosine = (np.concatenate(parts, axis=1) for parts in lines)
     is_web = np.array([strip.kind == "web" for strip in skin.strips])
     depth = np.where(is_web, 0.0, OUTER_FACE) * laid.thickness
-    place, step, normal, ends = _middle_lines(line, cosine, depth, is_mirrored=skin.surface.is_mirrored)
+    place, step, normal, ends = _middle_lines(line, rate, cosine, depth, is_mirrored=skin.surface.is_mirrored)
     there = _existing(skin, z, laid, frames)
     section, strip = np.nonzero(there)
     start = np.array([*range(n_gaps), *(a for a, _ in pairs)])
@@ -154,37 +154,56 @@ def _place_seams(blade: BladeDefinition, skin: SkinMap, z: Floats) -> _Frames:
     return _Frames(seams.t[at[1]], place[at[1]], slope, closing[at[1]])
 
 
-def _skin_lines(skin: SkinMap, z: Floats, frames: _Frames) -> tuple[Floats, Floats]:
-    """(m, gaps, p, 2) samples of every strip of the skin on the loft, and (m, gaps, p) cosines."""
+def _skin_lines(skin: SkinMap, z: Floats, frames: _Frames) -> tuple[Floats, Floats, Floats]:
+    """Samples of every strip of the skin on the loft.
+
+    Returns
+    -------
+    (m, gaps, p, 2) float array, m
+    (m, gaps, p, 2) float array, m
+        Derivative within each piece, whose own coordinate runs from −1 to 1.
+    (m, gaps, p) float array
+        Cosine of the inclination.
+    """
     surface, t = skin.surface, frames.parameter
-    share = _shares(skin)
-    at = t[:, :-1, None] + share * np.diff(t, axis=1)[..., None]
+    share, stretch = _shares(skin)
+    width = np.diff(t, axis=1)[..., None]
+    at = t[:, :-1, None] + share * width
     z_at = np.broadcast_to(z[:, None, None], at.shape)
     line = surface.points(z_at, at)[..., :2]
     across, along = surface.tangents(z_at, at)
     normal = np.cross(across, along)
     cosine = np.linalg.norm(normal[..., :2], axis=-1) / np.linalg.norm(normal, axis=-1)
+    rate = across[..., :2] * (width * stretch)[..., None]
+    # closed trailing edges are drawn to their middle, linearly over the strip beside each
     ends = [surface.points(z, np.full_like(z, side))[:, :2] for side in (1.0, -1.0)]
     apart = 0.5 * frames.closing[:, None, None] * (ends[0] - ends[1])[:, None]
     line[:, 0] += (1.0 - share[0])[:, None] * apart
+    rate[:, 0] -= stretch[0][:, None] * apart
     line[:, -1] -= share[-1][:, None] * apart
-    return line, cosine
+    rate[:, -1] -= stretch[-1][:, None] * apart
+    return line, rate, cosine
 
 
-def _shares(skin: SkinMap) -> Floats:
-    """(gaps, p) share of the strip at which its samples lie, denser towards the nose beside it."""
+def _shares(skin: SkinMap) -> tuple[Floats, Floats]:
+    """(gaps, p) share of the strip at which its samples lie, and its derivative within each piece.
+
+    The samples are denser beside the leading and the trailing edge, where sections turn most.
+    """
     x = gauss_points(N_GAUSS)[0]
-    nose = skin.seams.labels.index("leading edge")
     even = np.linspace(0.0, 1.0, N_PIECES + 1)
-    breaks = np.tile(even, (skin.n_seams - 1, 1))
-    breaks[nose] = even**2
-    breaks[nose - 1] = 1.0 - even[::-1] ** 2
+    n_gaps, nose = skin.n_seams - 1, skin.seams.labels.index("leading edge")
+    breaks = np.tile(even, (n_gaps, 1))
+    for edge, is_start in ((nose, True), (0, True), (nose - 1, False), (n_gaps - 1, False)):
+        pulled = breaks[edge] ** 2 if is_start else 1.0 - (1.0 - breaks[edge]) ** 2
+        breaks[edge] = 0.3 * breaks[edge] + 0.7 * pulled
     half = 0.5 * np.diff(breaks, axis=1)[..., None]
-    return np.asarray((breaks[:, :-1, None] + half * (1.0 + x)).reshape(len(breaks), -1))
+    share = breaks[:, :-1, None] + half * (1.0 + x)
+    return share.reshape(n_gaps, -1), np.repeat(half[..., 0], N_GAUSS, axis=1)
 
 
-def _straight_lines(frames: _Frames, pairs: list[tuple[int, int]]) -> tuple[Floats, Floats]:
-    """(m, pairs, p, 2) samples of straight walls between seams, and (m, pairs, p) cosines."""
+def _straight_lines(frames: _Frames, pairs: list[tuple[int, int]]) -> tuple[Floats, Floats, Floats]:
+    """Samples of straight walls between seams, as of the skin's strips."""
     x = gauss_points(N_GAUSS)[0]
     piece = (np.arange(N_PIECES)[:, None] + 0.5 * (1.0 + x)) / N_PIECES
     share = piece.ravel()[:, None]
@@ -198,11 +217,11 @@ def _straight_lines(frames: _Frames, pairs: list[tuple[int, int]]) -> tuple[Floa
     size = np.linalg.norm(normal, axis=-1)
     # a wall without length is none, and has no inclination
     cosine = np.where(size > 0.0, np.linalg.norm(normal[..., :2], axis=-1) / np.where(size > 0.0, size, 1.0), 1.0)
-    return place[..., :2], cosine
+    return place[..., :2], along[..., :2] / (2 * N_PIECES), cosine
 
 
 def _middle_lines(
-    line: Floats, cosine: Floats, depth: Floats, *, is_mirrored: bool
+    line: Floats, rate: Floats, cosine: Floats, depth: Floats, *, is_mirrored: bool
 ) -> tuple[Floats, Floats, Floats, Floats]:
     """Places, steps, normals and ends of the lines at a depth beneath the given ones.
 
@@ -210,14 +229,13 @@ def _middle_lines(
     """
     shape = (*line.shape[:2], N_PIECES, N_GAUSS, 2)
     x, weight = gauss_points(N_GAUSS)
-    rate = rate_matrix(x)
-    tangent = (rate @ line.reshape(shape)).reshape(line.shape)
-    size = np.linalg.norm(tangent, axis=-1, keepdims=True)
-    tangent /= np.where(size > 0.0, size, 1.0)
+    size = np.linalg.norm(rate, axis=-1, keepdims=True)
+    tangent = rate / np.where(size > 0.0, size, 1.0)
     normal = np.stack([tangent[..., 1], -tangent[..., 0]], axis=-1) * (-1.0 if is_mirrored else 1.0)
-    place = line - (depth[:, :, None] / cosine)[..., None] * normal
+    inward = (depth[:, :, None] / cosine)[..., None] * normal
+    place = line - inward
     pieces = place.reshape(shape)
-    speed = np.sum((rate @ pieces).reshape(line.shape) * tangent, axis=-1)
+    speed = np.sum((rate - (rate_matrix(x) @ inward.reshape(shape)).reshape(line.shape)) * tangent, axis=-1)
     # where the laminate is thicker than the radius of the surface its middle would run backwards
     step = np.maximum(speed, 0.0) * np.tile(weight, N_PIECES)
     to_ends = value_matrix(x, np.array([-1.0, 1.0]))
