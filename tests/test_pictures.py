@@ -15,6 +15,7 @@ from sample_meshes import box_with_web, sandwich, tube
 
 from skinmesh.errors import MissingExtra
 from skinmesh.mesh.shellmesh import Region
+from skinmesh.show import render as render_module
 from skinmesh.show.outline import border_edges, cut_at
 from skinmesh.show.paint import PAINTS, paint_regions, paint_thickness, round_levels
 from skinmesh.show.palette import part_colours, rgb
@@ -231,6 +232,14 @@ def test_an_unknown_subject_names_the_known_ones(tmp_path: Path) -> None:
     with pytest.raises(ValueError, match="no subject 'plies'; known: region, stack, thickness, e1"):
         picture(tube(8, 2), tmp_path / "x.png", by="plies")
     assert set(PAINTS) == set(SUBJECTS)
+
+
+@pytest.mark.skipif(sys.platform != "linux", reason="VTK draws through EGL on Linux")
+def test_nothing_to_draw_with_is_said_before_vtk_ends_the_process(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.delenv("DISPLAY", raising=False)
+    monkeypatch.setattr(render_module, "EGL", "libNoSuchThing.so.1")
+    with pytest.raises(MissingExtra, match="apt-get install libegl1"):
+        require_pictures()
 
 
 @pytest.mark.parametrize("library", ["pyvista", "matplotlib.figure"])

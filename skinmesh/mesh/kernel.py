@@ -11,9 +11,15 @@ from contextlib import contextmanager
 from types import TracebackType
 from typing import Any
 
-import gmsh
-
 from skinmesh.errors import MeshError
+
+try:
+    import gmsh
+except OSError as error:  # pragma: no cover - where the wheel's system libraries are missing
+    raise ImportError(
+        f"gmsh does not load: {error}. On Debian and Ubuntu: apt-get install libglu1-mesa libgl1 libxcursor1 libxft2"
+        " libxinerama1 libxrender1 libfontconfig1 libgomp1"
+    ) from error
 
 _LOCK = threading.RLock()
 _MODEL = "skinmesh"

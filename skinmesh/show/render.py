@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import ctypes
+import os
+import sys
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -18,6 +21,8 @@ Pixels = NDArray[np.uint8]
 
 OVERSAMPLING = 2
 """Pixels are rendered this many times finer and then averaged."""
+
+EGL = "libEGL.so.1"
 
 
 @dataclass(frozen=True)
@@ -99,13 +104,14 @@ def quiet_plotter(width: int, height: int) -> Iterator[Any]:
     Raises
     ------
     MissingExtra
-        pyvista is not installed.
+        pyvista, or the library that draws without a display, is not installed.
     """
     try:
         import pyvista
         from vtkmodules.vtkCommonCore import vtkLogger
     except ImportError as error:
         raise MissingExtra(f"Pictures need pyvista and matplotlib: pip install pyvista matplotlib ({error})") from error
+    _require_window_system()
     # Without a display VTK first knocks at an X server, and would print that nobody answers.
     told = vtkLogger.GetCurrentVerbosityCutoff()
     vtkLogger.SetStderrVerbosity(vtkLogger.VERBOSITY_OFF)
@@ -117,6 +123,16 @@ def quiet_plotter(width: int, height: int) -> Iterator[Any]:
             plotter.close()
     finally:
         vtkLogger.SetStderrVerbosity(told)
+
+
+def _require_window_system() -> None:
+    """Say what VTK, which ends the whole process where it finds nothing to draw with, does not say."""
+    if sys.platform != "linux" or os.environ.get("DISPLAY"):
+        return
+    try:
+        ctypes.CDLL(EGL)
+    except OSError as error:
+        raise MissingExtra(f"Pictures need {EGL} where there is no display: apt-get install libegl1") from error
 
 
 def shaded(colours: Floats, normals: Floats, camera: Camera) -> Pixels:
