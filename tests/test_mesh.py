@@ -31,6 +31,7 @@ from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.kernel import gmsh_session
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.surface.loft import loft_surface
 
 CASES = [
     (hand, order, shape)
@@ -373,6 +374,23 @@ def test_a_web_may_stand_anywhere(place, span):
     nodes = np.unique(mesh.cells[mesh.region == web])
     assert mesh.points[nodes, 2].min() == pytest.approx(span[0])
     assert mesh.points[nodes, 2].max() == pytest.approx(span[1])
+
+
+@pytest.mark.parametrize("strip", [None, constant(0.05)])
+def test_the_area_of_a_web_is_that_between_its_feet(strip):
+    """Whatever the numbers of its seams: without a trailing strip the pressure foot is on seam 1."""
+    table = stations([0, 5], [1.5, 1.0], ["n", "n"], pitch_axis=0.35)
+    layout = Layout(webs=(WebRule("web", foot(FromAxis(constant(0.0))), (1.0, 4.0)),), trailing_strip=strip)
+    definition = blade(table, {"n": NacaProfile("0021")}, layout=layout, plies=(), mesh=rule(0.1))
+    mesh = build_mesh(definition)
+    surface = loft_surface(definition)
+    z = np.linspace(1.0, 4.0, 301)
+    t = np.linspace(0.01, 0.99, 4001)
+    section = surface.section(z[:, None], t)
+    height = 2.0 * np.array([np.interp(0.0, row.real, row.imag) for row in section])  # a symmetric profile
+    own = mesh.region == [region.name for region in mesh.regions].index("web")
+    assert element_areas(mesh)[own].sum() == pytest.approx(np.trapezoid(height, z), rel=1e-4)
+    assert len(np.intersect1d(mesh.node_sets["web suction foot"], mesh.node_sets["web pressure foot"])) == 0
 
 
 def test_a_web_in_one_twisted_plane_is_flat():

@@ -93,10 +93,10 @@ def _tie(skin: SkinMap, level: Floats, seam: Floats, sheet: Ints) -> tuple[Ints,
     seam, sheet = seam.copy(), sheet.copy()
     last = float(skin.n_seams - 1)
     for web in skin.webs:
-        own = sheet == web.sheet
-        for height, foot in ((0.0, web.pressure_seam), (1.0, web.suction_seam)):
-            at_foot = own & (seam == height)
-            seam[at_foot], sheet[at_foot] = float(foot), SKIN
+        # both feet are found before either is renamed: a seam may have the number of the other foot's height
+        at_pressure, at_suction = ((sheet == web.sheet) & (seam == height) for height in (0.0, 1.0))
+        seam[at_pressure], seam[at_suction] = float(web.pressure_seam), float(web.suction_seam)
+        sheet[at_pressure | at_suction] = SKIN
     on_skin = sheet == SKIN
     closed = np.interp(level, np.arange(len(skin.closing)), skin.closing) == 1.0
     # the base runs from the last seam back to the first; where the edge is closed all of it is the first seam

@@ -155,8 +155,8 @@ def _closing(part: _OpenPart, sense: float, size: float, fixed: Floats) -> tuple
     the end where there is room, and otherwise from the open part.
     """
     end, room = (part.tip, part.room_after) if sense > 0.0 else (part.root, part.room_before)
-    if room == 0.0:
-        return end, None
+    if room <= TINY * size:  # open up to the end of the blade
+        return end + sense * room, None
     length, least, inside = CLOSING_LENGTH * size, LEAST_STRETCH * size, INSIDE_SHARE * (part.tip - part.root)
     rows = (fixed - end) * sense
     inner = float(np.max(rows[rows <= TINY * size], initial=-np.inf))  # nearest fixed row on the open side
