@@ -180,6 +180,19 @@ def test_overlap_begins_where_the_section_is_as_thin_as_both_laminates(tmp_path:
         assert station["share_of_chord"] == pytest.approx(expected, abs=0.012)
 
 
+@pytest.mark.parametrize(("web_thickness", "verdict"), [(0.002, PASS), (0.005, WARN)])
+def test_a_web_that_ends_on_thin_skin_is_named(tmp_path: Path, web_thickness: float, verdict: str) -> None:
+    blade = short_blade()
+    plies = tuple(replace(p, thickness=constant(web_thickness)) if "webs" in p.covers else p for p in blade.plies)
+    (line,) = lines_of(report_of(build_mesh(replace(blade, plies=plies)), tmp_path, formats=("vtu",)), "web ends")
+    assert line.verdict == verdict
+    assert [(end["z_m"], end["skin_m"], end["web_m"]) for end in line.details["ends"]] == [
+        (z, 0.002, web_thickness) for z in (0.5, 0.5, 3.5, 3.5)
+    ]
+    assert "web, z = 0.500 m on " in line.where
+    assert bool(len(line.elements)) == (verdict == WARN)
+
+
 def test_limits_can_be_set(tmp_path: Path) -> None:
     write(build_mesh(short_blade()), tmp_path, formats=("vtu",))
     loose = check_directory(tmp_path, limits={"aspect": (50, 100)})
@@ -259,7 +272,12 @@ def without_key(key: str) -> Callable[[str], str]:
         (spoil("summary.json", lambda _: "[]"), "must be an object"),
         (spoil("summary.json", without_key("materials")), r"sample\.summary\.json: 1 problem\n  materials: is missing"),
         (spoil("summary.json", without_key("regions")), "regions: is missing"),
+        (spoil("summary.json", without_key("mass_kg")), "mass_kg: is missing"),
+        (spoil("summary.json", without_key("counts")), "counts: is missing"),
+        (spoil("summary.json", lambda text: text.replace('"order": 2', '"order": NaN')), "NaN is no number"),
         (spoil("stacks.csv", lambda text: text.replace("0.002", "O.002")), "not a number"),
+        (spoil("stacks.csv", lambda text: text.replace("0.002", "nan")), "not a number"),
+        (spoil("stacks.csv", lambda text: text.replace("0.002", "-0.002")), "not a number"),
         (spoil("stacks.csv", lambda text: text.replace("balsa", "balza")), "no material 'balza'"),
         (spoil("stacks.csv", lambda text: text.split("\n")[0] + "\n"), "more stacks than the table"),
     ],

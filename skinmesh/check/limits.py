@@ -66,6 +66,7 @@ DEFAULT_LIMITS: Mapping[str, Limit] = {
     "ply area": Limit(0.05, 0.25, OWN),
     "layers ended at once": Limit(4.0, float("inf"), COMMON),
     "taper": Limit(0.1, float("inf"), COMMON),
+    "skin under a web's end": Limit(0.5, 0.0, OWN),
     "layer jump": Limit(6.0, float("inf"), SOLVER),
     "knots": Limit(0.5, float("inf"), OWN),
 }

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from skinmesh.check.finding import Finding, not_made, verdict_of
 from skinmesh.check.limits import Limit
+from skinmesh.check.thick import laid_inwards
 from skinmesh.mesh.shellmesh import ShellMesh
 
 Floats = NDArray[np.float64]
@@ -30,7 +31,7 @@ class _Ring:
     start: Floats
     stop: Floats
     normal: Floats
-    thickness: Floats
+    depth: Floats
     element: Ints
 
 
@@ -48,14 +49,14 @@ def check_overlap(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Findi
     """
     if not mesh.stacks:
         return [not_made("trailing-edge overlap", "the blade file has no plies")]
-    if mesh.surface != "outer":
-        return [not_made("trailing-edge overlap", f"the rule is for nodes on the outer face, not on '{mesh.surface}'")]
     if "leading edge" not in mesh.report.seams or not len(mesh.report.stations):
         return [not_made("trailing-edge overlap", "the summary names no leading edge or no stations")]
+    mesh = laid_inwards(mesh)
     limit = limits["overlap"]
+    ends = mesh.row[mesh.cells[:, : mesh.n_sides]]
     stations, elements = [], []
     for k in range(len(mesh.report.stations)):
-        entry, beyond = _station(mesh, k, limit)
+        entry, beyond = _station(mesh, ends, k, limit)
         if entry:
             stations.append(entry)
             elements.append(beyond)
@@ -83,10 +84,10 @@ def check_overlap(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Findi
     ]
 
 
-def _station(mesh: ShellMesh, k: int, limit: Limit) -> tuple[dict[str, Any], Ints]:
+def _station(mesh: ShellMesh, ends: Floats, k: int, limit: Limit) -> tuple[dict[str, Any], Ints]:
     """What one station shows, and its overlapping elements where the limit is passed."""
     z = float(mesh.report.stations[k])
-    at = _rows_at(mesh, z)
+    at = _rows_at(mesh, ends, z)
     nothing: dict[str, Any] = {}
     if at is None:
         return nothing, np.zeros(0, dtype=np.int64)
@@ -121,16 +122,16 @@ def _station(mesh: ShellMesh, k: int, limit: Limit) -> tuple[dict[str, Any], Int
     return entry, beyond
 
 
-def _rows_at(mesh: ShellMesh, z: float) -> tuple[float, Ints] | None:
+def _rows_at(mesh: ShellMesh, ends: Floats, z: float) -> tuple[float, Ints] | None:
     """Row coordinate of a section, and the elements with an edge on it: those behind, at the tip those before."""
     rows = mesh.report.rows
     wanted = [k for k, (_, place) in enumerate(rows) if abs(place - z) <= 1e-6 * max(abs(rows[-1][1]), 1e-30)]
     if not wanted:
         return None
     row = float(wanted[0])
-    own = mesh.row[mesh.cells[:, : mesh.n_sides]]
-    side = own.min(axis=1) == row if row < mesh.row.max() else own.max(axis=1) == row
-    return row, np.flatnonzero(side & (mesh.side != 0) & ((own == row).sum(axis=1) == 2))
+    own = np.flatnonzero((mesh.side != 0) & ((ends == row).sum(axis=1) == 2))
+    far = ends[own].max(axis=1) if row < mesh.row.max() else -ends[own].min(axis=1)
+    return row, own[far > (row if row < mesh.row.max() else -row)]
 
 
 def _ring(mesh: ShellMesh, elements: Ints, row: float) -> _Ring:
@@ -142,7 +143,9 @@ def _ring(mesh: ShellMesh, elements: Ints, row: float) -> _Ring:
     across = np.column_stack([along[:, 1], -along[:, 0]])
     across /= np.maximum(np.linalg.norm(across, axis=1, keepdims=True), 1e-300)
     sense = np.where(np.einsum("ei,ei->e", across, mesh.e3[elements, :2]) < 0, -1.0, 1.0)
-    return _Ring(start, stop, across * sense[:, None], mesh.thickness[elements], elements)
+    # From the nodes inwards: all of the laminate where they lie on its outer face.
+    depth = (0.5 + mesh.offset[elements]) * mesh.thickness[elements]
+    return _Ring(start, stop, across * sense[:, None], depth, elements)
 
 
 def _crowding(own: _Ring, other: _Ring, front: Floats, chord: Floats) -> tuple[Floats, Floats]:
@@ -163,7 +166,7 @@ def _crowding(own: _Ring, other: _Ring, front: Floats, chord: Floats) -> tuple[F
     nearest = distance.argmin(axis=1)
     gap = distance[np.arange(len(origin)), nearest]
     slant = np.abs(np.einsum("pi,pi->p", ray, other.normal[nearest]))
-    needed = np.repeat(own.thickness, len(SAMPLES)) + other.thickness[nearest] / np.maximum(slant, 0.1)
+    needed = np.repeat(own.depth, len(SAMPLES)) + other.depth[nearest] / np.maximum(slant, 0.1)
     ratio = np.where(np.isfinite(gap), needed / np.maximum(gap, 1e-12), 0.0)
     place = (points - front) @ chord
     return place, ratio.reshape(place.shape)

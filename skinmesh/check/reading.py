@@ -8,7 +8,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from io import StringIO
 from itertools import groupby
-from math import radians
+from math import isfinite, radians
 from pathlib import Path
 from typing import Any
 
@@ -81,6 +81,7 @@ def read_built_mesh(directory: Path) -> BuiltMesh:
     stem = _stem_in(directory)
     summary = _read(directory / f"{stem}{SUMMARY}", _parsed_summary)
     vtu = _read_vtu(directory / f"{stem}.vtu")
+    _told(f"{stem}{SUMMARY}", _require, summary)
     materials = _told(f"{stem}{SUMMARY}", _materials, summary)
     table = directory / f"{stem}.stacks.csv"
     stacks, contents = _read(table, lambda text: _stacks(table.name, text, materials))
@@ -153,10 +154,27 @@ def _told(file: str, make: Callable[..., Any], *arguments: Any) -> Any:
 
 
 def _parsed_summary(text: str) -> Mapping[str, Any]:
-    summary = json.loads(text)
+    summary = json.loads(text, parse_constant=_refuse_constant)
     if not isinstance(summary, dict):
         raise ValueError("the summary must be an object")
     return summary
+
+
+def _refuse_constant(text: str) -> float:
+    raise ValueError(f"{text} is no number")
+
+
+def _require(summary: Mapping[str, Any]) -> None:
+    """Touch what the checks will look for later, so that a gap is found here."""
+    dict(summary["counts"])
+    for key in ("mass_kg", "area_m2"):
+        float(summary[key])
+        for region in summary["regions"]:
+            float(region[key])
+    for region in summary["regions"]:
+        int(region["elements"])
+    for stack in summary["stacks"]:
+        str(stack["content"])
 
 
 def _materials(summary: Mapping[str, Any]) -> dict[str, Material]:
@@ -186,11 +204,18 @@ def _stacks(file: str, text: str, materials: Mapping[str, Material]) -> tuple[tu
             content = row["content"]
             try:
                 material = materials[_name(row["material"])]
-                layer = Layer(_name(row["ply"]), material, float(row["thickness_m"]), radians(float(row["angle_deg"])))
+                layer = _layer(row, material)
             except KeyError:
                 problems.append(Problem(file, 0, f"stack {number}", f"no material '{row['material']}' in the summary"))
             except (TypeError, ValueError):
-                problems.append(Problem(file, 0, f"stack {number}, order {row['order']}", "not a number"))
+                problems.append(
+                    Problem(
+                        file,
+                        0,
+                        f"stack {number}, order {row['order']}",
+                        "not a number, or a thickness that is not above 0",
+                    )
+                )
             else:
                 layers.append(layer)
         stacks.append(Stack(tuple(layers)))
@@ -198,6 +223,13 @@ def _stacks(file: str, text: str, materials: Mapping[str, Material]) -> tuple[tu
     if problems:
         raise InputError(problems)
     return tuple(stacks), tuple(contents)
+
+
+def _layer(row: Mapping[str, str], material: Material) -> Layer:
+    thickness, angle = float(row["thickness_m"]), float(row["angle_deg"])
+    if not (isfinite(angle) and isfinite(thickness) and thickness > 0.0):
+        raise ValueError("neither nothing nor infinite")
+    return Layer(_name(row["ply"]), material, thickness, radians(angle))
 
 
 def _name(text: str) -> str:

@@ -27,6 +27,7 @@ from skinmesh.check.solver import check_solver
 from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
 from skinmesh.check.totals import check_files, check_inputs, check_mass
+from skinmesh.check.webs import check_web_ends
 from skinmesh.errors import OutputError
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
@@ -91,8 +92,8 @@ def check_directory(
     limits : mapping of str to (float, float), optional
         Warning and failure in place of a default, by the names in ``skinmesh.check.limits.DEFAULT_LIMITS``.
     input_folders : iterable of Path
-        Where else to look for the input files: in these folders, and one folder further down. The directory and its
-        parent are always looked at.
+        Where else to look for the input files: in these folders, and down to two below. The directory and its parent
+        are always looked at.
     progress : callable, optional
         Called with the name of each stage and the share of the work done when it begins.
 
@@ -118,6 +119,7 @@ def check_directory(
         ("axes", lambda: check_axes(mesh)),
         ("plies", lambda: check_plies(mesh, table, limits=chosen)),
         ("ply drops", lambda: check_drops(mesh, table, limits=chosen)),
+        ("web ends", lambda: check_web_ends(mesh, limits=chosen)),
         ("quality", lambda: check_quality(mesh, limits=chosen)),
         ("density", lambda: check_density(mesh, table, limits=chosen)),
         ("fidelity", lambda: check_fidelity(mesh, has_mid_nodes=built.has_mid_nodes, limits=chosen)),

@@ -39,7 +39,7 @@ def check_folding(mesh: ShellMesh, *, limits: Mapping[str, Limit], has_mid_nodes
     if not mesh.stacks:
         return [not_made("inner face", NO_PLIES)]
     limit = limits["laminate depth over radius"]
-    depth = 1.0 - inner_face_ratio(_laid_inwards(mesh))
+    depth = 1.0 - inner_face_ratio(laid_inwards(mesh))
     beyond = np.flatnonzero(depth > limit.warn)
     beyond = beyond[np.argsort(-depth[beyond], kind="stable")]
     n_fail = int(np.count_nonzero(depth >= limit.fail))
@@ -59,8 +59,17 @@ def check_folding(mesh: ShellMesh, *, limits: Mapping[str, Limit], has_mid_nodes
     ]
 
 
-def _laid_inwards(mesh: ShellMesh) -> ShellMesh:
-    """The mesh with its laminate where it belongs: a wrong offset is for the check of offsets to name."""
+def laid_inwards(mesh: ShellMesh) -> ShellMesh:
+    """The mesh with its laminate where it belongs: a wrong offset is for the check of offsets to name.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+
+    Returns
+    -------
+    ShellMesh
+    """
     if mesh.surface != "outer":
         return mesh
     is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Iterable
 from hashlib import sha256
 from pathlib import Path
@@ -15,6 +16,7 @@ from skinmesh.mesh.measure import element_areas
 MASS = 1e-6
 SAME = 1e-8
 LARGEST_INPUT = 50_000_000
+DEPTH, MOST_FOLDERS = 2, 500
 
 
 def check_files(built: BuiltMesh) -> list[Finding]:
@@ -169,7 +171,7 @@ def check_inputs(built: BuiltMesh, *, folders: Iterable[Path]) -> list[Finding]:
     ----------
     built : BuiltMesh
     folders : iterable of Path
-        Where to look: in them, and one folder further down.
+        Where to look: in them, and down to two folders below.
 
     Returns
     -------
@@ -183,7 +185,9 @@ def check_inputs(built: BuiltMesh, *, folders: Iterable[Path]) -> list[Finding]:
     changed: list[str] = []
     lost: list[str] = []
     for source in sources:
-        found = [place / source.file for place in places if (place / source.file).is_file()]
+        # The build names a file from the blade file's folder; whoever looks may stand elsewhere.
+        names = dict.fromkeys([source.file, Path(source.file).name])
+        found = [place / name for place in places for name in names if (place / name).is_file()]
         found = [path for path in found if path.stat().st_size <= LARGEST_INPUT]
         if any(sha256(path.read_bytes()).hexdigest() == source.sha256 for path in found):
             same.append(source.file)
@@ -208,6 +212,16 @@ def check_inputs(built: BuiltMesh, *, folders: Iterable[Path]) -> list[Finding]:
 
 
 def _with_subfolders(folder: Path) -> list[Path]:
-    if not folder.is_dir():
+    """A folder and those down to two below it, without hidden ones."""
+    found = [folder] if folder.is_dir() else []
+    newest = found
+    for _ in range(DEPTH):
+        newest = [child for parent in newest for child in _children(parent)]
+        found = [*found, *newest][:MOST_FOLDERS]
+    return found
+
+
+def _children(folder: Path) -> list[Path]:
+    if not os.access(folder, os.R_OK | os.X_OK):
         return []
-    return [folder, *sorted(path for path in folder.iterdir() if path.is_dir() and not path.name.startswith("."))]
+    return sorted(path for path in folder.iterdir() if path.is_dir() and not path.name.startswith("."))
