@@ -59,13 +59,14 @@ def check_bulk_deck(built: BuiltMesh, path: Path) -> list[Finding]:
     """
     try:
         lines = _lines(path.read_bytes())
-        elements = _elements(lines)
-        number, points = _nodes(lines)
+        card = _card(lines)
+        elements = _elements(lines, card)
+        number, points = _nodes(lines, card)
         geometry = sorted_geometry(number, points, elements.number, elements.nodes)
         found = [compare_geometry(CHECK, built, geometry, has_second_order=False)]
         if not built.mesh.stacks:
             return found
-        return [*found, *_laminates(built, lines, elements), _directions(built, geometry, elements)]
+        return [*found, *_laminates(built, lines, card, elements), _directions(built, geometry, elements)]
     except (DeckError, ValueError, IndexError, KeyError) as error:
         return [unreadable(CHECK, error)]
 
@@ -102,8 +103,8 @@ def _real(text: bytes) -> float:
     return float(text) if cut <= 0 or b"e" in text.lower() else float(text[:cut] + b"e" + text[cut:])
 
 
-def _nodes(lines: Text) -> tuple[Ints, Floats]:
-    first = np.flatnonzero(_card(lines) == b"GRID*")
+def _nodes(lines: Text, card: Text) -> tuple[Ints, Floats]:
+    first = np.flatnonzero(card == b"GRID*")
     if not len(first):
         raise DeckError("it has no GRID* cards")
     head, tail = lines[first], lines[first + 1]
@@ -111,8 +112,7 @@ def _nodes(lines: Text) -> tuple[Ints, Floats]:
     return _part(head, 8, 16).astype(np.int64), np.column_stack([x, y, z])
 
 
-def _elements(lines: Text) -> _Elements:
-    card = _card(lines)
+def _elements(lines: Text, card: Text) -> _Elements:
     kinds = [kind for kind in _NODES_OF if np.any(card == kind)]
     if len(kinds) != 1:
         raise DeckError(f"it has elements of {len(kinds)} kinds")
@@ -128,9 +128,8 @@ def _elements(lines: Text) -> _Elements:
     return _Elements(whole[0], whole[1], np.column_stack(whole[2:]), _reals(fields[at]), _reals(fields[at + 1]))
 
 
-def _long_cards(lines: Text, name: bytes) -> list[list[str]]:
+def _long_cards(lines: Text, card: Text, name: bytes) -> list[list[str]]:
     """Fields of every card of sixteen-character fields: the first line and those that go on."""
-    card = _card(lines)
     cards = []
     for start in np.flatnonzero(card == name).tolist():
         stop = start + 1
@@ -146,14 +145,17 @@ def _long_cards(lines: Text, name: bytes) -> list[list[str]]:
     return cards
 
 
-def _laminates(built: BuiltMesh, lines: Text, elements: _Elements) -> list[Finding]:
+def _laminates(built: BuiltMesh, lines: Text, card: Text, elements: _Elements) -> list[Finding]:
     mesh = built.mesh
     wanted = deck_layers(mesh)
-    constants = {int(card[0]): [_real(value.encode()) for value in card[1:8]] for card in _long_cards(lines, b"MAT8*")}
+    constants = {
+        int(fields[0]): [_real(value.encode()) for value in fields[1:8]]
+        for fields in _long_cards(lines, card, b"MAT8*")
+    }
     layups: dict[int, list[tuple[int, float, float]]] = {}
-    for card in _long_cards(lines, b"PCOMP*"):
-        plies = [card[k : k + 4] for k in range(8, len(card), 4)]
-        layups[int(card[0])] = [
+    for fields in _long_cards(lines, card, b"PCOMP*"):
+        plies = [fields[k : k + 4] for k in range(8, len(fields), 4)]
+        layups[int(fields[0])] = [
             (int(material), _real(thickness.encode()), _real(angle.encode()))
             for material, thickness, angle, _ in plies
             if material
