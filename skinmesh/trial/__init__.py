@@ -1,0 +1,1 @@
+"""A built mesh in a solver, beside beam theory."""
