@@ -238,7 +238,7 @@ class MeshRule:
     shape : str
         'quad' or 'triangle'.
     surface : str
-        'outer'.
+        'outer', the mould face, or 'mid', the middle of the laminate.
     close_gap : float, m
         A trailing-edge gap thinner than this is closed.
     cut_at_ply_ends : bool

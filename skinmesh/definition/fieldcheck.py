@@ -59,14 +59,11 @@ def check_fields(document: Document, report: FieldReport) -> BladeFields:
 
 
 def _refuse_what_comes_later(data: dict[str, Any], report: FieldReport) -> None:
-    plies, mesh = data.get("plies"), data.get("mesh")
+    plies = data.get("plies")
     for i, ply in enumerate(plies if isinstance(plies, list) else []):
         if isinstance(ply, dict) and "outline" in ply:
             report.add(("plies", i, "outline"), f"a ply with an outline {NOT_YET}; give the ends of the ply with span")
             del ply["outline"]
-    if isinstance(mesh, dict) and mesh.get("surface") == "mid":
-        report.add(("mesh", "surface"), f"'mid' {NOT_YET}; write outer: the nodes then lie on the mould face")
-        del mesh["surface"]
 
 
 def _take_naca_as_written(data: dict[str, Any], document: Document) -> None:

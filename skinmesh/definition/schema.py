@@ -252,7 +252,9 @@ class MeshFields(Part):
         None, description="1: corner nodes only; 2 (default): with mid-side nodes."
     )
     shape: Literal["quad", "triangle"] | None = Field(None, description="Shape of the elements; quad where not given.")
-    surface: Literal["outer"] | None = Field(None, description="Where the nodes lie: on the mould face.")
+    surface: Literal["outer", "mid"] | None = Field(
+        None, description="Where the nodes lie: on the mould face, or in the middle of the laminate."
+    )
     close_gap: float | None = Field(
         None, ge=0, description="A trailing-edge gap thinner than this is closed, m; 0.002 where not given."
     )

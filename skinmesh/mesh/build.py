@@ -13,6 +13,7 @@ from skinmesh.definition.names import resolve_cover
 from skinmesh.mesh.assemble import assemble_mesh
 from skinmesh.mesh.closing import closing_elements
 from skinmesh.mesh.inner_face import find_thick_elements
+from skinmesh.mesh.midsurface import move_to_middle
 from skinmesh.mesh.plane import cut_patches, mesh_patches
 from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
 from skinmesh.skin.cover import cover_strips
@@ -73,6 +74,10 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     )
     tell("elements", 0.5)
     mesh = assemble_mesh(blade, skin, parts, stacks, report)
+    if blade.mesh.surface == "mid":
+        tell("mid surface", 0.65)
+        mesh, limited = move_to_middle(mesh)
+        mesh = replace(mesh, report=replace(mesh.report, warnings=mesh.report.warnings + limited))
     tell("checks", 0.8)
     mesh = _with_thick_elements(mesh)
     tell("done", 1.0)

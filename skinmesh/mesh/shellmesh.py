@@ -84,7 +84,7 @@ class ShellMesh:
     order : int
         1 or 2.
     surface : str
-        Reference surface: 'outer'.
+        Reference surface: 'outer' or 'mid'.
     points : (n, 3) float array, m
         All nodes of the second-order mesh, the ``n_corners`` corner nodes first.
     n_corners : int
@@ -96,7 +96,7 @@ class ShellMesh:
         Index into ``stacks``, NO_STACK where no ply lies.
     offset : (m,) float array
         Height of the reference surface over the middle of the laminate along +e3, as a share of the thickness:
-        0.5 on the skin, 0 on webs.
+        0.5 on the skin of an outer mesh, 0 on webs.
     e1, e2, e3 : (m, 3) float array
         Element axes: orthonormal, right-handed.
     sheet : (n,) int array
