@@ -433,3 +433,25 @@ def test_caps_that_all_end_at_one_place_are_named(tmp_path: Path) -> None:
     assert at_end[0]["z_m"] == pytest.approx(15.0, abs=0.3)
     assert lines[0].verdict == WARN
     assert "20 layers at once" in lines[0].measured
+
+
+def with_middle_offsets(mesh: ShellMesh) -> ShellMesh:
+    """Offsets of a reference surface whose nodes lie at half of the mean thickness round them."""
+    cells, thickness = mesh.cells, mesh.thickness
+    uses = np.bincount(cells.ravel(), minlength=len(mesh.points))
+    sums = np.bincount(cells.ravel(), weights=np.repeat(thickness, cells.shape[1]), minlength=len(mesh.points))
+    depth = (0.5 * sums / np.maximum(uses, 1))[cells].mean(axis=1)
+    is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
+    return replace(mesh, surface="mid", offset=np.where(is_web, 0.0, 0.5 - depth / thickness))
+
+
+@pytest.mark.parametrize(("factor", "share", "verdict"), [(1, 0.25, PASS), (0, 0.5, FAIL), (-1, 0.75, FAIL)])
+def test_offsets_of_a_middle_surface_keep_outer_faces_flush(
+    tmp_path: Path, factor: int, share: float, verdict: str
+) -> None:
+    mesh = with_middle_offsets(sound())
+    write(replace(mesh, offset=factor * mesh.offset), tmp_path, formats=("vtu",))
+    (line,) = [finding for finding in check_directory(tmp_path).findings if finding.check == "offset"]
+    assert line.verdict == verdict
+    # Nodes at the foot of a web are as deep as skin and web together are thick in the mean: not quite the rule's case.
+    assert line.details["share"] == pytest.approx(share, abs=0.08)

@@ -88,6 +88,28 @@ def edge_table(mesh: ShellMesh, elements: Ints | None = None) -> EdgeTable:
     )
 
 
+def smooth_pairs(mesh: ShellMesh) -> tuple[EdgeTable, Ints, Ints]:
+    """Edges of the skin between two elements, but for those on the trailing edges, where the section has its corners.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+
+    Returns
+    -------
+    table : EdgeTable
+        Of the skin.
+    edge : (p,) int array
+    elements : (p, 2) int array
+    """
+    table = edge_table(mesh, skin_elements(mesh))
+    edge, pair = table.pairs()
+    last = float(len(mesh.report.seams) - 1)
+    seam = mesh.seam[table.ends[edge]]
+    is_corner = np.all((seam <= 0.0) | (seam >= last), axis=1)
+    return table, edge[~is_corner], pair[~is_corner]
+
+
 def skin_elements(mesh: ShellMesh) -> Ints:
     """Elements of the skin, the trailing base included: all but webs."""
     is_web = np.array([region.kind == "web" for region in mesh.regions])

@@ -8,6 +8,7 @@ from itertools import groupby
 import numpy as np
 from numpy.typing import NDArray
 
+from skinmesh.check.edges import smooth_pairs
 from skinmesh.check.finding import Finding, listed, not_made, span_of, verdict_of
 from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import SpanTable
@@ -18,6 +19,7 @@ Ints = NDArray[np.int64]
 
 SCHEDULE = "one ply schedule, region by region"
 FEW_ROWS = 2
+LEAST_STEP, FLUSH = 0.02, 0.4
 NO_PLIES = "the blade file has no plies"
 
 
@@ -214,24 +216,50 @@ def _areas(mesh: ShellMesh, table: SpanTable, limit: Limit) -> Finding:
 
 
 def _offset(mesh: ShellMesh) -> Finding:
-    is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
-    if mesh.surface == "outer":
-        beyond = np.flatnonzero(np.abs(mesh.offset - np.where(is_web, 0.0, 0.5)) > 1e-9)
-        limit, source = "0.5 on skins, 0 on webs", "nodes on the outward face of the skin, in the middle of webs"
-    elif mesh.surface == "mid":
-        beyond = np.flatnonzero(~(np.abs(mesh.offset) <= 0.5 + 1e-9))
-        limit, source = "−0.5 to 0.5", "the reference surface lies within the laminate"
-    else:
+    if mesh.surface == "mid":
+        return _offset_in_the_middle(mesh)
+    if mesh.surface != "outer":
         return not_made("offset", f"no rule for a reference surface '{mesh.surface}'")
+    is_web = np.array([region.kind == "web" for region in mesh.regions])[mesh.region]
+    beyond = np.flatnonzero(np.abs(mesh.offset - np.where(is_web, 0.0, 0.5)) > 1e-9)
     values = listed(f"{value:g}" for value in np.unique(np.round(mesh.offset, 6)))
     return Finding(
         "offset",
         f"height of the nodes over the laminate's middle, in thicknesses: {values}; {len(beyond)} elements beyond",
-        limit,
-        source,
+        "0.5 on skins, 0 on webs",
+        "nodes on the outward face of the skin, in the middle of webs",
         verdict_of(fails=len(beyond)),
         span_of(mesh, beyond),
         beyond,
+    )
+
+
+def _offset_in_the_middle(mesh: ShellMesh) -> Finding:
+    """Whether outer faces stay flush at steps of thickness: the face lies (½ − offset) thicknesses over the nodes.
+
+    Nodes at a step lie at the mean depth. An element beside it has half of its nodes there, and its face may differ
+    from its neighbour's by a quarter of the step; without offsets it is half of it, with the wrong sign three quarters.
+    """
+    _, _, pair = smooth_pairs(mesh)
+    thickness = mesh.thickness[pair]
+    face = (0.5 - mesh.offset[pair]) * thickness
+    step = np.abs(thickness[:, 0] - thickness[:, 1])
+    at_step = step > LEAST_STEP * thickness.max(axis=1)
+    if not at_step.any():
+        return not_made("offset", "the skin has no step in thickness by which to judge the offset")
+    jump = np.abs(face[:, 0] - face[:, 1])
+    share = float(jump[at_step].sum() / step[at_step].sum())
+    beyond = np.unique(pair[at_step & (jump > FLUSH * step)])
+    fails = share > FLUSH
+    return Finding(
+        "offset",
+        f"at steps of thickness the outer face jumps by {share:.2f} of the step in the mean",
+        f"fail {FLUSH:g}",
+        "0.25 where offsets keep the face flush, 0.5 without offsets, 0.75 with the wrong sign",
+        verdict_of(fails=fails),
+        span_of(mesh, beyond) if fails else "",
+        beyond if fails else np.zeros(0, dtype=np.int64),
+        {"share": share},
     )
 
 

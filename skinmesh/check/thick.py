@@ -8,7 +8,7 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.check.edges import edge_table, skin_elements
+from skinmesh.check.edges import skin_elements, smooth_pairs
 from skinmesh.check.finding import Finding, not_made, place_of, span_of, verdict_of
 from skinmesh.check.limits import Limit
 from skinmesh.mesh.frames import element_axes
@@ -132,12 +132,7 @@ def _curvature(mesh: ShellMesh) -> Floats:
 
     The trailing edges are corners of the section, not curvature: edges on them are left out.
     """
-    table = edge_table(mesh, skin_elements(mesh))
-    edge, pair = table.pairs()
-    last = float(len(mesh.report.seams) - 1)
-    seam = mesh.seam[table.ends[edge]]
-    is_corner = np.all((seam <= 0.0) | (seam >= last), axis=1)
-    edge, pair = edge[~is_corner], pair[~is_corner]
+    table, edge, pair = smooth_pairs(mesh)
     normal = element_axes(mesh.points, mesh.connectivity)[2]
     a, b = normal[pair[:, 0]], normal[pair[:, 1]]
     # The angle between two planes, whichever way round a normal goes.
