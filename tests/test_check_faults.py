@@ -340,6 +340,15 @@ def edit_theta(text: str) -> str:
     return "\n".join(lines)
 
 
+def edit_zoffs(text: str) -> str:
+    """The sign of one offset."""
+    lines = text.split("\n")
+    at = next(i for i, line in enumerate(lines) if line.startswith("CQUAD8")) + 1
+    assert lines[at][64:72].strip().startswith("-")
+    lines[at] = lines[at][:64] + f"{lines[at][64:72].strip()[1:]:>8}" + lines[at][72:]
+    return "\n".join(lines)
+
+
 def edit_bulk_node(text: str) -> str:
     lines = text.split("\n")
     at = next(i for i, line in enumerate(lines) if line.startswith("GRID*")) + 400
@@ -384,6 +393,7 @@ EDITS = {
     "a deck cut short": ("inp", lambda text: text[: len(text) // 3], "keyword deck"),
     "node of the bulk data": ("bdf", edit_bulk_node, "bulk data"),
     "thickness of a PCOMP": ("bdf", edit_pcomp_thickness, "bulk data"),
+    "offset of an element": ("bdf", edit_zoffs, "bulk data"),
     "material angle": ("bdf", edit_theta, "bulk data"),
     "density in MAT8": ("bdf", lambda text: text.replace("1920.0", "1921.0", 1), "bulk data"),
     "bulk data cut short": ("bdf", lambda text: text[: len(text) // 2], "bulk data"),

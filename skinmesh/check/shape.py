@@ -212,6 +212,8 @@ def _flat_areas(mesh: ShellMesh, limit: Limit) -> Finding:
     flat = mesh.report.developed_areas
     if not flat:
         return not_made("fidelity", "areas against the flat pattern: the summary has none")
+    if mesh.surface != "outer":
+        return not_made("fidelity", "areas against the flat pattern: that is the pattern of the outer face")
     areas = np.bincount(mesh.region, weights=element_areas(mesh), minlength=len(mesh.regions))
     own = {region.name: float(area) for region, area in zip(mesh.regions, areas, strict=True) if region.name in flat}
     # A small region may differ by much of its own and little of the blade's: the skin's area is the measure.
