@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from math import pi
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -11,11 +12,13 @@ from blades import blade, demonstration, rule, skin_ply, stations, tube
 from solver_runs import STEEL, needs_ccx, ring_of, run_solver, tube_strain_and_twist
 from topology import consistent_orientation, outward_share, stray_free_edges
 
+import skinmesh
 from skinmesh.definition.blade import CircleProfile, PlyRule
 from skinmesh.definition.spanwise import constant
 from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.inner_face import middle_height
 from skinmesh.mesh.measure import element_areas, mass_properties, solid_mass
+from skinmesh.mesh.quality import corner_points, scaled_jacobian
 
 
 def on_mid(definition):
@@ -140,3 +143,14 @@ def test_tube_in_a_solver_on_both_surfaces(tmp_path, share):
         else:
             # torque and moment arrive as radius / arm; the slope read over the outer coordinates does so again
             assert ratio == pytest.approx((radius / outer, (radius / outer) ** 2), rel=1e-3)
+
+
+@pytest.mark.parametrize("name", ["marram-24", "tidal-6", "research-rotor"])
+def test_whole_blades_stay_sound_on_the_mid_surface(name):
+    root = Path(__file__).parent
+    folder = root / "published" if name == "research-rotor" else root.parent / "examples"
+    mesh = on_mid(skinmesh.load(folder / name / f"{name}.yaml"))
+    assert "folded laminate" not in mesh.element_sets
+    assert scaled_jacobian(corner_points(mesh)).min() > 0.0
+    assert outward_share(mesh) == 1.0
+    assert stray_free_edges(mesh) == 0

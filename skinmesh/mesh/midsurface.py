@@ -10,7 +10,7 @@ import shapely
 from numpy.typing import NDArray
 
 from skinmesh.mesh.frames import element_axes
-from skinmesh.mesh.inner_face import NodeNormals, node_normals
+from skinmesh.mesh.inner_face import NodeNormals, inner_face_ratio, node_normals
 from skinmesh.mesh.shellmesh import NO_STACK, ShellMesh
 
 Floats = NDArray[np.float64]
@@ -21,17 +21,18 @@ ROOM_SHARE = 0.45  # of the distance to the opposite wall: both walls move, and 
 OFFSET_STEP = 0.05  # an eccentricity left at a thickness step is rounded to this share of the thickness
 NO_ROOM_NEEDED = 1.0 - 1e-9
 N_HALVINGS = 6
-LEAST_AREA_SHARE = 0.1  # an element that keeps less of its area than this counts as folded
+LEAST_CORNER_SHARE = 0.4  # an element whose corner spans less than this share of what it did counts as folded
 
 
 def move_to_middle(mesh: ShellMesh) -> tuple[ShellMesh, tuple[str, ...]]:
     """Move a mesh from the outer face of its laminate to the middle.
 
     At a node where the surface is smooth, the move goes along the mean normal by half of the mean thickness of the
-    elements round it. At an edge, such as the corner of a blunt trailing edge, it is the least move that takes every
-    wall inward by half of its own thickness. Nodes of a web follow its feet. What eccentricity remains in an element,
-    beside a step in thickness or where a move was limited, is kept as its offset, so that the outer face stays where
-    it was.
+    elements round it. At an edge, such as a sharp trailing edge, it is the least move that takes every wall inward by
+    half of its own thickness. Nodes of a web follow its feet, and those of the trailing base the two trailing edges,
+    which move with their own sides: a narrow base could not hold a move of its own. What eccentricity remains in an
+    element, beside a step in thickness or where a move was limited, is kept as its offset, so that the outer face
+    stays where it was.
 
     Parameters
     ----------
@@ -44,31 +45,62 @@ def move_to_middle(mesh: ShellMesh) -> tuple[ShellMesh, tuple[str, ...]]:
     tuple of str
         Warnings: where moves were limited, because the walls would cross or an element would fold.
     """
-    on_skin = np.array([region.kind != "web" for region in mesh.regions])[mesh.region]
-    wanted = _wanted_moves(mesh, on_skin)
-    moves, is_limited = _limited_by_room(mesh, wanted)
+    kinds = np.array([region.kind for region in mesh.regions])[mesh.region]
+    on_skin = kinds != "web"
+    on_sides = on_skin & (kinds != "base")
+    moves, is_limited = _limited_by_room(mesh, _wanted_moves(mesh, on_sides))
+    _carry_base(mesh, moves, on_sides)
     moves, is_folded = _without_folds(mesh, moves, on_skin)
-    _carry_webs(mesh, moves, on_skin)
-    points = mesh.points + moves
-    e1, e2, e3 = element_axes(points, mesh.connectivity)
-    inward = np.einsum("ekd,ed->e", moves[mesh.cells], mesh.e3) / mesh.cells.shape[1]
-    share = 0.5 + inward / np.where(mesh.thickness > 0.0, mesh.thickness, np.inf)
-    offset = np.where(on_skin & (mesh.thickness > 0.0), np.round(share / OFFSET_STEP) * OFFSET_STEP, 0.0)
-    moved = replace(mesh, points=points, e1=e1, e2=e2, e3=e3, offset=offset, surface="mid")
+    moved, has_thick = _without_folded_laminates(mesh, moves, on_skin)
     told = [
         _told(mesh, nodes, reason)
         for nodes, reason in (
             (is_limited, "opposite walls would cross"),
             (is_folded, "elements would fold"),
+            (has_thick, "the laminate would fold"),
         )
         if nodes.any()
     ]
     return moved, tuple(told)
 
 
-def _wanted_moves(mesh: ShellMesh, on_skin: NDArray[np.bool_]) -> Floats:
-    """(n, 3) moves of the skin's nodes, those of webs zero."""
-    skin = np.flatnonzero(on_skin)
+def _moved(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -> ShellMesh:
+    """The mesh with its nodes moved, its axes made anew, and the eccentricity that remains as its offset."""
+    points = mesh.points + moves
+    e1, e2, e3 = element_axes(points, mesh.connectivity)
+    inward = np.einsum("ekd,ed->e", moves[mesh.cells], mesh.e3) / mesh.cells.shape[1]
+    share = 0.5 + inward / np.where(mesh.thickness > 0.0, mesh.thickness, np.inf)
+    offset = np.where(on_skin & (mesh.thickness > 0.0), np.round(share / OFFSET_STEP) * OFFSET_STEP, 0.0)
+    return replace(mesh, points=points, e1=e1, e2=e2, e3=e3, offset=offset, surface="mid")
+
+
+def _without_folded_laminates(
+    mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]
+) -> tuple[ShellMesh, NDArray[np.bool_]]:
+    """Halve the moves round elements whose laminate folds on the moved surface and did not before."""
+    moves = moves.copy()
+    halved = np.zeros(len(mesh.points), dtype=bool)
+    _carry_webs(mesh, moves, on_skin)
+    moved = _moved(mesh, moves, on_skin)
+    folded = inner_face_ratio(moved) <= 0.0
+    if not folded.any():
+        return moved, halved
+    was_sound = inner_face_ratio(mesh) > 0.0
+    for _ in range(N_HALVINGS):
+        nodes = np.unique(mesh.cells[folded & was_sound & on_skin])
+        if len(nodes) == 0:
+            break
+        moves[nodes] *= 0.5
+        halved[nodes] = True
+        _carry_webs(mesh, moves, on_skin)
+        moved = _moved(mesh, moves, on_skin)
+        folded = inner_face_ratio(moved) <= 0.0
+    return moved, halved
+
+
+def _wanted_moves(mesh: ShellMesh, on_sides: NDArray[np.bool_]) -> Floats:
+    """(n, 3) moves of the nodes of both sides, others zero."""
+    skin = np.flatnonzero(on_sides)
     normals = _smooth_normals(mesh, skin)
     half = 0.5 * np.repeat(mesh.thickness[skin], mesh.cells.shape[1])
     group = normals.group.ravel()
@@ -143,11 +175,11 @@ def _without_folds(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -
     moves = moves.copy()
     halved = np.zeros(len(mesh.points), dtype=bool)
     corners = mesh.cells[on_skin][:, : mesh.n_sides]
-    before = _vector_areas(mesh.points[corners])
-    size = np.linalg.norm(before, axis=1)
+    before = _corner_areas(mesh.points[corners])
+    size = np.sum(before**2, axis=2)
     for _ in range(N_HALVINGS):
-        after = _vector_areas((mesh.points + moves)[corners])
-        folded = np.einsum("ed,ed->e", after, before) < LEAST_AREA_SHARE * size**2
+        after = _corner_areas((mesh.points + moves)[corners])
+        folded = np.any(np.sum(after * before, axis=2) < LEAST_CORNER_SHARE * size, axis=1)
         if not folded.any():
             break
         nodes = np.unique(mesh.cells[on_skin][folded])
@@ -156,8 +188,28 @@ def _without_folds(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -
     return moves, halved
 
 
-def _vector_areas(x: Floats) -> Floats:
-    return np.asarray(0.5 * np.sum(np.cross(x, np.roll(x, -1, axis=1)), axis=1))
+def _corner_areas(x: Floats) -> Floats:
+    """(m, k, 3) vector areas that the edges span at each corner."""
+    return np.asarray(np.cross(np.roll(x, -1, axis=1) - x, np.roll(x, 1, axis=1) - x))
+
+
+def _carry_base(mesh: ShellMesh, moves: Floats, on_sides: NDArray[np.bool_]) -> None:
+    """Let the inner nodes of the trailing base follow the two trailing edges, in proportion to their place between."""
+    is_inner = mesh.sheet == 0
+    is_inner[np.unique(mesh.cells[on_sides])] = False
+    inner = np.flatnonzero(is_inner)
+    if len(inner) == 0:
+        return
+    last = np.floor(mesh.seam[inner].min())
+    edges = [np.flatnonzero((mesh.sheet == 0) & (mesh.seam == seam)) for seam in (last, 0.0)]
+    share = (mesh.seam[inner] - last)[:, None]
+    moves[inner] = _along(mesh, moves, edges[0], inner) * (1.0 - share) + _along(mesh, moves, edges[1], inner) * share
+
+
+def _along(mesh: ShellMesh, moves: Floats, line: Ints, nodes: Ints) -> Floats:
+    """Moves of a line of nodes along the span, at the rows of other nodes."""
+    line = line[np.argsort(mesh.row[line])]
+    return np.column_stack([np.interp(mesh.row[nodes], mesh.row[line], moves[line, axis]) for axis in range(3)])
 
 
 def _carry_webs(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -> None:
@@ -166,11 +218,7 @@ def _carry_webs(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -> N
         own = np.flatnonzero(mesh.sheet == sheet)
         region = mesh.region[~on_skin & np.any(mesh.sheet[mesh.cells] == sheet, axis=1)][0]
         feet = [mesh.node_sets[f"{mesh.regions[region].name} {side} foot"] for side in ("pressure", "suction")]
-        at_feet = [
-            np.column_stack([np.interp(mesh.row[own], mesh.row[foot][o], moves[foot][o, axis]) for axis in range(3)])
-            for foot in feet
-            for o in [np.argsort(mesh.row[foot])]
-        ]
+        at_feet = [_along(mesh, moves, foot, own) for foot in feet]
         height = mesh.seam[own][:, None]
         moves[own] = at_feet[0] * (1.0 - height) + at_feet[1] * height
 
