@@ -20,7 +20,7 @@ MOST_STRETCH = 1.5  # at a corner a node moves at most this many times half of t
 ROOM_SHARE = 0.45  # of the distance to the opposite wall: both walls move, and stay apart
 OFFSET_STEP = 0.05  # an eccentricity left at a thickness step is rounded to this share of the thickness
 NO_ROOM_NEEDED = 1.0 - 1e-9
-N_HALVINGS = 6
+N_HALVINGS = 12
 LEAST_CORNER_SHARE = 0.4  # an element whose corner spans less than this share of what it did counts as folded
 
 
