@@ -177,7 +177,7 @@ def test_where_the_beam_begins_does_not_matter() -> None:
 def test_shear_adds_its_own_deflection() -> None:
     # Timoshenko, Vibration Problems in Engineering: PL³/3EI + PL/GA (from memory)
     edges, sections = uniform(9)
-    shear = np.broadcast_to(np.diag([4e5, 9e5]), (9, 2, 2))
+    shear = np.broadcast_to(np.diag([1 / 4e5, 1 / 9e5]), (9, 2, 2))
     bays = beam_bays(edges, sections, shear=shear)
     tip = deflection(bays, tip_load(bays, [100.0, 50.0, 0], [0, 0, 0]))[-1, :2]
     assert tip[0] == pytest.approx(100 * LENGTH**3 / 3 / FLAP + 100 * LENGTH / 4e5)

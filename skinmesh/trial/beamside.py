@@ -9,20 +9,22 @@ from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.sparse import coo_matrix
+from scipy.sparse.csgraph import connected_components
+from scipy.sparse.linalg import splu
 
 from skinmesh.beam.exact import exact_sections
-from skinmesh.beam.meshcut import mesh_sections
+from skinmesh.beam.meshcut import mesh_sections, mesh_walls
 from skinmesh.beam.sections import SectionProperties
 from skinmesh.definition.read import load_blade
-from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.skin.unroll import unroll_skin
 from skinmesh.surface.loft import loft_surface
-from skinmesh.trial.loads import wall_stiffness
 from skinmesh.trial.model import TrialModel
 from skinmesh.trial.theory import BeamBays, beam_bays
 
 Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
 
 EXACT, MESH = "exact sections", "mesh"
 PLAIN, COUPLED, SHEARED, ALL = "plain", "coupled", "sheared", "all"
@@ -116,7 +118,7 @@ def make_beams(model: TrialModel, blade_file: Path | None) -> BeamSide:
         note = f"thin-wall laminate theory on the exact sections of {blade_file.name}"
         if blade.sources[0].sha256 != model.mesh.sources[0].sha256:
             note += ", which has changed since the mesh was built"
-    shear = row_shear_stiffness(model.mesh, z)
+    shear = shear_compliance(model.mesh, middle)
     n_parts = -(-LEAST_BAYS // len(middle))
     part = np.repeat(np.arange(len(middle)), n_parts)
     share = np.arange(len(middle) * n_parts + 1) / n_parts
@@ -135,26 +137,56 @@ def make_beams(model: TrialModel, blade_file: Path | None) -> BeamSide:
     )
 
 
-def row_shear_stiffness(mesh: ShellMesh, z: Floats) -> Floats:
-    """Stiffness of each row of elements against transverse shear, were its sections rigid in their plane.
+def shear_compliance(mesh: ShellMesh, z: Floats) -> Floats:
+    """Transverse shear strains of cuts through the mesh under unit forces in the shear centre.
 
-    That is an upper bound: in a real section the shear flow follows from equilibrium. Shear deflections from it are at
-    least what they are said to be.
+    The shear flow of each force follows from the growth of the axial force along the walls; its energy gives the mean
+    strain (Timoshenko & Goodier, Theory of Elasticity; Cowper, Journal of Applied Mechanics 33, 1966, on what a mean
+    shear strain may be; from memory). Stretching along a wall is taken as even over each element.
 
     Parameters
     ----------
     mesh : ShellMesh
-    z : (r + 1,) float array, m
-        Ends of the rows.
+    z : (m,) float array, m
 
     Returns
     -------
-    (r, 2, 2) float array, N
+    (m, 2, 2) float array, 1/N
+        Strains along x and y under forces along x and y.
     """
-    middle = mesh.points[mesh.cells[:, : mesh.n_sides], 2].mean(axis=1)
-    row = np.clip(np.searchsorted(z, middle, side="right") - 1, 0, len(z) - 2)
-    across = mesh.e2[:, :2]
-    walls = (element_areas(mesh) * wall_stiffness(mesh)[1])[:, None, None] * across[:, :, None] * across[:, None, :]
-    total = np.zeros((len(z) - 1, 2, 2))
-    np.add.at(total, row, walls)
-    return total / np.diff(z)[:, None, None]
+    walls = mesh_walls(mesh, z)
+    m, section = len(z), walls.section
+    length = np.linalg.norm(walls.step, axis=2)
+    weight = walls.laminates.held[:, 0, 0, None] * length
+    slack = length.sum(axis=1) / walls.laminates.shear
+
+    def by_section(values: Floats) -> Floats:
+        total = np.zeros((m, *values.shape[1:]))
+        np.add.at(total, section, values)
+        return total
+
+    centre = by_section(np.einsum("wp,wpd->wd", weight, walls.place)) / by_section(weight.sum(axis=1))[:, None]
+    arm = walls.place - centre[section][:, None]
+    bending = by_section(np.einsum("wp,wpi,wpj->wij", weight, arm, arm))
+    growth = np.einsum("wp,wpi,wij->wj", weight, arm, np.linalg.inv(bending)[section])
+    warping = _balanced_warping(walls.nodes, 1.0 / slack, growth)
+    flow = (warping[walls.nodes[:, 1]] - warping[walls.nodes[:, 0]]) / slack[:, None]
+    return by_section(np.einsum("w,wi,wj->wij", slack, flow, flow))
+
+
+def _balanced_warping(nodes: Ints, spring: Floats, growth: Floats) -> Floats:
+    """(k, 2) warping of the nodes of walls whose flows balance the growth of axial force in them."""
+    k, (start, end) = int(nodes.max()) + 1, nodes.T
+    values = np.concatenate([spring, spring, -spring, -spring])
+    rows, columns = np.concatenate([start, end, start, end]), np.concatenate([start, end, end, start])
+    matrix = coo_matrix((values, (rows, columns)), shape=(k, k))
+    load = np.zeros((k, 2))
+    for side in (start, end):
+        np.add.at(load, side, 0.5 * growth)
+    # one node of each part stands still
+    _, part = connected_components(matrix, directed=False)
+    free = np.ones(k, dtype=bool)
+    free[np.unique(part, return_index=True)[1]] = False
+    warping = np.zeros((k, 2))
+    warping[free] = splu(matrix.tocsc()[free][:, free]).solve(load[free])
+    return warping

@@ -21,6 +21,7 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
 MOST_CONDITION = 1e8
+NOISE = 1e-9
 
 
 @dataclass(frozen=True, eq=False)
@@ -102,7 +103,7 @@ def tip_forces(mesh: ShellMesh, wanted: Floats, point: Floats) -> NodalForces:
     # force along x, along y, and torque, that a unit flow in each edge makes
     made = np.stack([*np.einsum("ek,ekd->de", share, tangent), np.sum(share * lever, axis=1)]) @ flow
     scale = 1.0 / np.maximum(np.abs(made).max(axis=0), np.finfo(float).tiny)
-    if np.linalg.cond(made * scale) > MOST_CONDITION:
+    if not np.linalg.cond(made * scale) < MOST_CONDITION:
         raise ValueError("the tip has no closed cell, and cannot carry a torque as shear flow")
     in_edge = flow @ (scale * np.linalg.solve(made * scale, wanted))
     nodes, inverse = np.unique(edges, return_inverse=True)
@@ -144,7 +145,9 @@ def _shear_flows(ends: Ints, share: Floats, arm: Floats, lever: Floats, *, axial
     warping = np.linalg.solve(balance + mean, right)
     flow = stiff[:, None] * (gradient @ warping)
     flow[:, 2] += stiff * swept
-    return flow
+    # an open section leaves nothing but noise
+    flow[:, 2] *= np.abs(flow[:, 2]).max() > NOISE * np.abs(stiff * swept).max()
+    return np.asarray(flow)
 
 
 def _edge_tangents(nodes: Floats) -> Floats:

@@ -175,12 +175,14 @@ def _elements(file: str, head: str) -> tuple[Ints, Ints]:
 def _numbers(file: str, head: str, mark: str, n_columns: int) -> Floats:
     """The table of numbers under a keyword line."""
     _, found, rest = head.partition(mark)
+    if not found:
+        raise InputError([Problem(file, 0, mark.strip(), "is missing; build the mesh again")])
     block = rest.partition("*")[0]
     try:
         values = np.array(block.replace("\n", ",").rstrip(",").split(","), dtype=float)
         table = values.reshape(-1, n_columns)
     except ValueError as error:
         raise InputError([Problem(file, 0, mark.strip(), "is not as we write it; build the mesh again")]) from error
-    if not found or not len(table) or not np.all(np.isfinite(table)):
-        raise InputError([Problem(file, 0, mark.strip(), "is missing or holds no numbers; build the mesh again")])
+    if not np.all(np.isfinite(table)):
+        raise InputError([Problem(file, 0, mark.strip(), "holds something that is no number; build the mesh again")])
     return table

@@ -141,7 +141,7 @@ def _case_remark(case: StaticCase | ModeCase, z: Floats) -> str:
     words = [
         f"{what} {parts[key]:+.1%}"
         for key, what in (
-            ("shear", "shear strains (at least)"),
+            ("shear", "shear strains"),
             ("coupling", "couplings within the sections"),
             ("mesh", "the mesh's sections in the place of the exact ones"),
         )
@@ -161,8 +161,8 @@ def _case_remark(case: StaticCase | ModeCase, z: Floats) -> str:
 def place_of_difference(case: StaticCase, z: Floats) -> tuple[float, float]:
     """Where the solver and the refined beam theory part.
 
-    Were the blade beyond a place as theory has it, the difference of displacement and rotation at that place alone would
-    make some difference at the tip. The two places are where that first comes to a tenth of the whole, and to
+    Were the blade beyond a place as theory has it, the difference of displacement and rotation at that place alone
+    would make some difference at the tip. The two places are where that first comes to a tenth of the whole, and to
     nine tenths for good.
 
     Parameters
@@ -251,8 +251,8 @@ def _document(trial: Trial) -> dict[str, Any]:
             "difference": "solver / theory - 1",
             "parts": "what shear strains, couplings of the sections, and the mesh's sections alone make different;"
             " left: the solver beside theory with all of them",
-            "ovalisation, warping": "root mean square of a ring's motion that no rigid motion explains, in the section's"
-            " plane and across it, over the largest displacement",
+            "ovalisation, warping": "root mean square of a ring's motion that no rigid motion explains, in the"
+            " section's plane and across it, over the largest displacement",
         },
         "tip_loads_act_at_m": _numbers([*trial.tip, trial.beams.plain.z[-1]]),
         "mass_kg": {

@@ -96,9 +96,9 @@ def beam_bays(
         Ends of the bays, root first.
     sections : SectionProperties
         Of n sections.
-    shear : (n, 2, 2) float array, N, optional
-        Stiffness against transverse shear strains along x and y; none makes the beam stiff in shear, as Euler and
-        Bernoulli have it.
+    shear : (n, 2, 2) float array, 1/N, optional
+        Transverse shear strains along x and y under unit forces in the shear centre; none makes the beam stiff in
+        shear, as Euler and Bernoulli have it.
     is_coupled : bool
         Take the full matrix of each section, in which stretching, bending and twisting act on each other, in the place
         of its stiffnesses alone.
@@ -126,7 +126,7 @@ def beam_bays(
     taken[:, 3, 1] = -sections.shear_centre[:, 0]
     compliance = np.swapaxes(taken, 1, 2) @ _inverse(stiffness) @ taken
     if shear is not None:
-        compliance[:, :2, :2] += np.linalg.inv(shear)
+        compliance[:, :2, :2] += shear
     return BeamBays(np.asarray(edges), compliance, sections.mass, sections.mass_centre, sections.inertia)
 
 
