@@ -72,5 +72,5 @@ class OutputError(SkinmeshError):
     """A file or a directory cannot be written."""
 
 
-class MissingExtra(SkinmeshError):  # noqa: N818 (it is read as "missing extra: …")
+class MissingExtra(SkinmeshError):
     """A library of an optional extra is not installed; the message carries the install line."""
