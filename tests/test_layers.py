@@ -21,7 +21,7 @@ PACKAGE = REPOSITORY / "skinmesh"
 ALLOWED = {
     "gmsh": ("mesh.kernel", "write.formats.msh"),
     "meshio": ("write.*",),
-    "shapely": ("skin.*",),
+    "shapely": ("skin.*", "mesh.midsurface"),
     "yaml": ("definition.*",),
     "pydantic": ("definition.*",),
     "pydantic_core": ("definition.*",),
