@@ -25,6 +25,8 @@ import click
 from rich.console import Console
 
 import skinmesh
+from skinmesh.commands.beam_command import beam
+from skinmesh.commands.check_command import check
 from skinmesh.commands.closing import print_closing, print_timings, printable
 from skinmesh.commands.stages import shown_stages
 from skinmesh.commands.starter import write_starter
@@ -171,6 +173,10 @@ def schema() -> None:
       skinmesh schema > blade.schema.json
     """
     click.echo(json.dumps(json_schema(), indent=2, ensure_ascii=False))
+
+
+for _command in (beam, check):
+    cli.add_command(_command)
 
 
 def main(arguments: Sequence[str] | None = None) -> NoReturn:

@@ -12,7 +12,7 @@ from skinmesh.definition.blade import BladeDefinition, PlyRule
 from skinmesh.definition.names import resolve_cover
 from skinmesh.mesh.assemble import assemble_mesh
 from skinmesh.mesh.closing import closing_elements
-from skinmesh.mesh.inner_face import find_thick_elements
+from skinmesh.mesh.inner_face import find_narrow_elements, find_thick_elements
 from skinmesh.mesh.midsurface import move_to_middle
 from skinmesh.mesh.plane import cut_patches, mesh_patches
 from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
@@ -85,9 +85,14 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
 
 
 def _with_thick_elements(mesh: ShellMesh) -> ShellMesh:
-    """Name the elements whose laminate is too thick for the surface that carries them."""
+    """Name the elements whose laminate is too thick for the surface that carries them, or for their own width."""
     failing, doubtful = find_thick_elements(mesh)
-    sets = {name: found for name, found in (("folded laminate", failing), ("thick laminate", doubtful)) if len(found)}
+    candidates = {
+        "folded laminate": failing,
+        "thick laminate": doubtful,
+        "narrow elements": find_narrow_elements(mesh),
+    }
+    sets = {name: found for name, found in candidates.items() if len(found)}
     if not sets:
         return mesh
     texts = tuple(_thick_text(mesh, name, found) for name, found in sets.items())
@@ -99,7 +104,8 @@ def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
     rule = {
         "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of"
         " layered shells stops there; take fewer plies or larger elements",
-        "thick laminate": "fills more than 0.8 of the radius of curvature or is thicker than the element is wide",
+        "thick laminate": "fills more than 0.8 of the radius of curvature",
+        "narrow elements": "is thicker than their shortest edge is long; shell theory says little there",
     }[name]
     regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
     z = mesh.points[mesh.cells[found, : mesh.n_sides], 2]

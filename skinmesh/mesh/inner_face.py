@@ -228,7 +228,7 @@ def inner_face_ratio(mesh: ShellMesh) -> Floats:
 
 
 def find_thick_elements(mesh: ShellMesh) -> tuple[Indices, Indices]:
-    """Elements whose laminate is too thick for the surface's curvature or for their own width.
+    """Elements whose laminate is too thick for the surface's curvature.
 
     Parameters
     ----------
@@ -239,15 +239,29 @@ def find_thick_elements(mesh: ShellMesh) -> tuple[Indices, Indices]:
     failing : int array
         Elements that a solver of layered shells refuses: the inner face is folded.
     doubtful : int array
-        Further elements whose laminate fills more than 0.8 of the radius of curvature, or is thicker than their
-        shortest edge is long: they run, and their answer deserves a look.
+        Further elements whose laminate fills more than 0.8 of the radius of curvature: they run, and their answer
+        deserves a look.
     """
     ratio = inner_face_ratio(mesh)
+    return np.flatnonzero(ratio <= 0.0), np.flatnonzero((ratio > 0.0) & (ratio < DOUBTFUL_RATIO))
+
+
+def find_narrow_elements(mesh: ShellMesh) -> Indices:
+    """Elements with an edge shorter than their laminate is thick.
+
+    They run; shell theory says little there, and a finer mesh makes more of them (common practice).
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+
+    Returns
+    -------
+    int array
+    """
     corners = mesh.points[mesh.cells[:, : mesh.n_sides]]
     shortest = np.linalg.norm(np.roll(corners, -1, axis=1) - corners, axis=2).min(axis=1)
-    fails = ratio <= 0.0
-    is_doubtful = ~fails & ((ratio < DOUBTFUL_RATIO) | (mesh.thickness > shortest))
-    return np.flatnonzero(fails), np.flatnonzero(is_doubtful)
+    return np.flatnonzero(mesh.thickness > shortest)
 
 
 def _normals_at(mesh: ShellMesh, places: Floats) -> Floats:
