@@ -126,7 +126,14 @@ def least_across(full_name: str, name: str, kind: str, across: Mapping[str, int]
 
 
 def divide_rows(
-    rows: Rows, forced: Mapping[int, int], ruler: Ruler, seams: SeamTable, n_gap: Ints, rule: MeshRule
+    rows: Rows,
+    forced: Mapping[int, int],
+    ruler: Ruler,
+    seams: SeamTable,
+    n_gap: Ints,
+    rule: MeshRule,
+    *,
+    counts: Mapping[int, int],
 ) -> Levels:
     """Choose the element rows.
 
@@ -134,13 +141,15 @@ def divide_rows(
     ----------
     rows : Rows
     forced : mapping of int to int
-        Divisions that are given, by the row before.
+        Even divisions that are given, by the row before.
     ruler : Ruler
     seams : SeamTable
         At the ruler's sections.
     n_gap : (k,) int array
         Elements across each gap.
     rule : MeshRule
+    counts : mapping of int to int
+        Numbers of divisions that are given, by the row before; they are spread by the wanted size.
 
     Returns
     -------
@@ -152,7 +161,7 @@ def divide_rows(
     n, row, z = [], [np.zeros(1)], [rows.z[:1]]
     for i, (low, high) in enumerate(zip(rows.z[:-1], rows.z[1:], strict=True)):
         ends = np.interp([low, high], ruler.z, passed)
-        count = forced.get(i) or max(1, int(np.ceil(ends[1] - ends[0] - 1e-6)))
+        count = forced.get(i) or counts.get(i) or max(1, int(np.ceil(ends[1] - ends[0] - 1e-6)))
         share = np.arange(1, count + 1) / count
         corner = (
             np.interp(ends[0] + share * (ends[1] - ends[0]), passed, ruler.z)

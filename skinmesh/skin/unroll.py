@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.definition.blade import PRESSURE, SIDE_NAMES, SUCTION, BladeDefinition
 from skinmesh.errors import InputError, Problem
 from skinmesh.skin.divisions import divide_gaps, divide_rows, least_across
+from skinmesh.skin.kept import KeptLayout, LayoutComparison
 from skinmesh.skin.plyspans import ply_ends
 from skinmesh.skin.rows import Rows, join_rows
 from skinmesh.skin.ruler import measure_sections
@@ -23,13 +26,17 @@ MOST_ELEMENTS = 4_000_000
 NEAR_ROW = 0.1  # a web end nearer to a station than this share of the size is moved onto it
 
 
-def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tuple[str, ...]]:
+def unroll_skin(
+    blade: BladeDefinition, surface: Surface, *, kept: KeptLayout | None = None
+) -> tuple[SkinMap, tuple[str, ...]]:
     """Lay out rows, seams and their divisions.
 
     Parameters
     ----------
     blade : BladeDefinition
     surface : Surface
+    kept : KeptLayout, optional
+        Layout of an earlier mesh whose divisions are to be used again.
 
     Returns
     -------
@@ -40,19 +47,24 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
     Raises
     ------
     InputError
-        The layout does not fit on the skin, or the mesh would be far too large.
+        The layout does not fit on the skin, the mesh would be far too large, or the layout is not the kept one.
     """
     rule, file = blade.mesh, blade.sources[0].file if blade.sources else blade.stem
     rows, spans, warnings = _find_rows(blade, surface)
     samples = np.union1d(rows.z, np.linspace(surface.z_ends[0], surface.z_ends[1], N_SPAN_SAMPLES))
     ruler = measure_sections(surface, samples)
     coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), file=file)
+    if kept is not None:
+        _refuse_other_layout(blade, kept, rows, coarse, file)
     gaps = divide_gaps(ruler, coarse, rule)
+    if kept is not None:
+        gaps = replace(gaps, n=kept.n_gaps)
     bases = _bases(rows, spans)
     forced = {base.first_row - 1: 2 for base in bases if base.root_apex} | {
         base.last_row: 2 for base in bases if base.tip_apex
     }
-    levels = divide_rows(rows, forced, ruler, coarse, gaps.n, rule)
+    counts = {} if kept is None else dict(enumerate(kept.n_levels.tolist()))
+    levels = divide_rows(rows, forced, ruler, coarse, gaps.n, rule, counts=counts)
     n_elements = int(levels.n.sum()) * int(gaps.n.sum())
     if n_elements > MOST_ELEMENTS:
         raise InputError(
@@ -68,6 +80,9 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
     webs = _webs(blade, surface, rows, levels.z, seams)
     closes = any(base.root_apex or base.tip_apex for base in bases)
     n_base = 2 if closes else max(1, _base_count(blade, surface, levels.z))
+    if kept is not None:
+        n_base = kept.n_base if bases else n_base
+        webs = tuple(replace(web, n_height=n) for web, n in zip(webs, kept.n_heights, strict=True))
     strips = (
         *(Strip(f"{SIDE_NAMES[side]} {name}", side, kind) for side, name, kind in seams.gap_names),
         Strip("trailing base", 0, "base"),
@@ -77,6 +92,16 @@ def unroll_skin(blade: BladeDefinition, surface: Surface) -> tuple[SkinMap, tupl
     pull = closing_pull(surface, levels.z, closing)
     skin = SkinMap(surface, rows, levels, seams, gaps, webs, bases, n_base, closing, pull, strips)
     return skin, (*warnings, *seam_warnings)
+
+
+def _refuse_other_layout(blade: BladeDefinition, kept: KeptLayout, rows: Rows, seams: SeamTable, file: str) -> None:
+    comparison = LayoutComparison()
+    comparison.compare("rows", kept.rows, rows.labels)
+    comparison.compare("seams", kept.seams, seams.labels)
+    comparison.compare("webs", kept.webs, [web.name for web in blade.layout.webs])
+    if comparison.changes:
+        text = "the layout is not that of the mesh to keep: " + "; ".join(comparison.changes)
+        raise InputError([Problem(file, 0, "--keep", f"{text}. Build without --keep, or undo the change")])
 
 
 def _spacing(blade: BladeDefinition, z: Floats) -> Floats | None:

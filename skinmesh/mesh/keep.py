@@ -1,0 +1,200 @@
+"""A rebuild under the numbers of an earlier mesh: its parametric coordinates on a new surface."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.definition.blade import BladeDefinition
+from skinmesh.errors import InputError, MeshError, Problem
+from skinmesh.mesh.closing import closing_elements
+from skinmesh.mesh.plane import PlaneMesh, with_middles
+from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
+from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.skin.cover import StackTable
+from skinmesh.skin.kept import KeptLayout
+from skinmesh.skin.skinmap import SKIN, SkinMap
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+POOR_ASPECT, POOR_JACOBIAN = 10.0, 0.3  # common practice, no source
+WORSE = 1.2  # a share of poor elements that grew by more than this is worth a warning
+
+
+@dataclass(frozen=True)
+class KeptQuality:
+    """Quality of an element shape before and after a rebuild.
+
+    Attributes
+    ----------
+    largest_aspect, smallest_jacobian : (float, float)
+        Before and after.
+    n_poor : (int, int)
+        Elements beyond an aspect of 10 or under a scaled Jacobian of 0.3.
+    """
+
+    largest_aspect: tuple[float, float]
+    smallest_jacobian: tuple[float, float]
+    n_poor: tuple[int, int]
+
+
+def kept_layout(old: ShellMesh) -> KeptLayout:
+    """Read the layout of a mesh off its parametric coordinates.
+
+    Parameters
+    ----------
+    old : ShellMesh
+
+    Returns
+    -------
+    KeptLayout
+    """
+    is_corner = np.arange(len(old.points)) < old.n_corners
+    n_rows, n_seams = len(old.report.rows), len(old.report.seams)
+    rows = np.unique(old.row[is_corner & (old.sheet == SKIN) & (old.seam == 0.0)])
+    root = old.seam[is_corner & (old.sheet == SKIN) & (old.row == 0.0)]
+    on_base = is_corner & (old.sheet == SKIN) & (old.seam > n_seams - 1.0)
+    at_rows = on_base & np.isin(old.row, rows)
+    webs = tuple(region.name for region in old.regions if region.kind == "web")
+    return KeptLayout(
+        rows=tuple(label for label, _ in old.report.rows),
+        seams=old.report.seams,
+        webs=webs,
+        n_levels=np.bincount(np.ceil(rows[1:]).astype(int) - 1, minlength=n_rows - 1),
+        n_gaps=np.bincount(np.floor(np.unique(root)).astype(int), minlength=n_seams)[: n_seams - 1],
+        n_base=1 + len(np.unique(old.seam[at_rows])),
+        n_heights=tuple(
+            1 + len(np.unique(old.seam[is_corner & (old.sheet == sheet)])) for sheet in range(1, len(webs) + 1)
+        ),
+    )
+
+
+def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
+    """Refuse a rebuild whose mesh is to be of another kind.
+
+    Raises
+    ------
+    InputError
+        Order, shape, hand or name differ.
+    """
+    shape = "quad" if old.n_sides == 4 else "triangle"
+    pairs = (
+        ("mesh.order", old.order, blade.mesh.order),
+        ("mesh.shape", shape, blade.mesh.shape),
+        ("hand", old.hand, blade.hand),
+    )
+    file = blade.sources[0].file if blade.sources else blade.stem
+    problems = [
+        Problem(file, 0, name, f"is now {now}, the mesh to keep has {before}; build without --keep")
+        for name, before, now in pairs
+        if before != now
+    ]
+    if problems:
+        raise InputError(problems)
+
+
+def kept_parts(old: ShellMesh, skin: SkinMap) -> tuple[PlaneMesh, ...]:
+    """The elements of an earlier mesh in the lattice of the skin map; gmsh has nothing to do.
+
+    Parameters
+    ----------
+    old : ShellMesh
+    skin : SkinMap
+        With the divisions of the old mesh.
+
+    Returns
+    -------
+    tuple of PlaneMesh
+    """
+    corners = old.cells[:, : old.n_sides]
+    if old.hand == "counter-clockwise":
+        corners = corners[:, [0, *range(old.n_sides - 1, 0, -1)]]
+    level = np.interp(old.row, skin.levels.row, np.arange(len(skin.levels.row)))[corners]
+    seam, sheet = old.seam[corners], old.sheet[old.cells].max(axis=1)
+    last = skin.n_seams - 1
+    names = [region.name for region in old.regions]
+    is_base = old.region == (names.index("trailing base") if "trailing base" in names else -1)
+    strip = np.minimum(np.ceil(old.seam[old.cells].max(axis=1) - 1e-9).astype(int) - 1, last - 1)
+    strip[is_base] = skin.base_strip
+    for web in skin.webs:
+        own = sheet == web.sheet
+        strip[own] = skin.web_strip(web)
+        at_foot = own[:, None] & (old.sheet[corners] == SKIN)
+        # the two feet are told apart by their side of the leading edge
+        nose = skin.seams.labels.index("leading edge")
+        seam = np.where(at_foot, np.where(seam > nose, 1.0, 0.0), seam)
+    wraps = (strip[:, None] == last - 1) & (sheet[:, None] == SKIN) & (seam == 0.0)
+    seam = np.where(wraps, float(last), np.where(is_base[:, None] & (seam == 0.0), last + 1.0, seam))
+    closing = np.interp(level, np.arange(len(skin.closing)), skin.closing)
+    is_closing = is_base & np.any((closing > 0.0) & (closing < 1.0), axis=1)
+    keep = ~is_closing
+    regular = PlaneMesh(with_middles(level[keep]), with_middles(seam[keep]), sheet[keep], strip[keep])
+    return regular, closing_elements(skin, shape="quad" if old.n_sides == 4 else "triangle")
+
+
+def keep_stack_numbers(table: StackTable, old: ShellMesh) -> StackTable:
+    """Number the stacks so that an equal content has its earlier number.
+
+    A new content takes the number of one that is gone, or the next free one; a number that nothing takes stays with
+    its earlier content, which then lies nowhere.
+
+    Parameters
+    ----------
+    table : StackTable
+    old : ShellMesh
+
+    Returns
+    -------
+    StackTable
+    """
+    before = {stack.content_name: i for i, stack in enumerate(old.stacks)}
+    now = [stack.content_name for stack in table.stacks]
+    free = [i for name, i in before.items() if name not in set(now)]
+    free += list(range(len(old.stacks), len(old.stacks) + len(now)))
+    numbers = np.array([before[name] if name in before else free.pop(0) for name in now], dtype=np.int64)
+    stacks = list(old.stacks) + [table.stacks[0]] * max(0, int(numbers.max(initial=-1)) + 1 - len(old.stacks))
+    for stack, number in zip(table.stacks, numbers, strict=True):
+        stacks[number] = stack
+    index = np.where(table.index >= 0, np.append(numbers, 0)[table.index], table.index)
+    return replace(table, stacks=tuple(stacks), index=index)
+
+
+def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
+    """Give a rebuilt mesh the node and element numbers of the old one.
+
+    Raises
+    ------
+    MeshError
+        The connectivity came out differently, which no change of geometry can explain.
+    """
+    if not np.array_equal(mesh.cells, old.cells):
+        raise MeshError("the rebuilt mesh has another connectivity than the one to keep")
+    return replace(mesh, node_number=old.node_number, element_number=old.element_number)
+
+
+def compare_quality(old: ShellMesh, new: ShellMesh) -> tuple[KeptQuality, tuple[str, ...]]:
+    """Set element quality before and after side by side.
+
+    Returns
+    -------
+    KeptQuality
+    tuple of str
+        A warning where kept divisions have become poor.
+    """
+    corners = [corner_points(mesh) for mesh in (old, new)]
+    aspect, jacobian = [aspect_ratio(c) for c in corners], [scaled_jacobian(c) for c in corners]
+    poor = [int(np.sum((a > POOR_ASPECT) | (j < POOR_JACOBIAN))) for a, j in zip(aspect, jacobian, strict=True)]
+    quality = KeptQuality(
+        (float(aspect[0].max()), float(aspect[1].max())),
+        (float(jacobian[0].min()), float(jacobian[1].min())),
+        (poor[0], poor[1]),
+    )
+    if poor[1] <= WORSE * poor[0] + 1:
+        return quality, ()
+    return quality, (
+        f"kept divisions: {poor[1]} elements beyond aspect {POOR_ASPECT:g} or scaled Jacobian {POOR_JACOBIAN:g}, before"
+        f" {poor[0]}; a build without --keep would divide anew",
+    )
