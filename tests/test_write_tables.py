@@ -13,6 +13,8 @@ import pytest
 from numpy.testing import assert_allclose
 from sample_meshes import BALSA, GLASS_UD, box_with_web, sandwich, tube
 
+from skinmesh.definition.blade import MeshRule
+from skinmesh.definition.spanwise import Spanwise, constant
 from skinmesh.laminate.code import laminate_codes
 from skinmesh.laminate.stack import Layer
 from skinmesh.mesh.measure import mass_properties, solid_mass
@@ -155,6 +157,35 @@ def test_summary_carries_the_report_and_where_it_came_from() -> None:
     assert set(found["versions"]) >= {"skinmesh", "numpy", "gmsh", "meshio", "python"}
     assert "unknown" not in found["versions"].values()
     assert "qualified engineer" in found["caution"]
+
+
+def test_summary_has_the_mesh_part_of_the_blade_file_with_its_defaults() -> None:
+    given = MeshRule(
+        Spanwise([0.0, 5.0], [0.2, 0.1]),
+        {"main cap": 6},
+        order=1,
+        shape="triangle",
+        surface="mid",
+        close_gap=0.004,
+        cut_at_ply_ends=True,
+        chord_error=0.001,
+        turning=radians(30.0),
+        least_spacing=constant(0.01),
+    )
+    found = json.loads(summary_table(replace(box(), report=BuildReport(mesh_rule=given))))["mesh"]
+    assert found == {
+        "size": [[0.0, 0.2], [5.0, 0.1]],
+        "across": {"main cap": 6},
+        "order": 1,
+        "shape": "triangle",
+        "surface": "mid",
+        "close_gap": 0.004,
+        "cut_at_ply_ends": True,
+        "chord_error": 0.001,
+        "turning": 30.0,
+        "least_spacing": 0.01,
+    }
+    assert json.loads(summary_table(box()))["mesh"] is None
 
 
 def test_a_mesh_without_plies() -> None:

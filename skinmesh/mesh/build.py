@@ -66,6 +66,7 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
         stations=surface.stations,
         developed_areas={name: float(polygon.area) for name, polygon in region_polygons(skin).items()},
         ply_areas=ply_areas(blade, skin, covered),
+        mesh_rule=blade.mesh,
     )
     tell("mesh", 0.3)
     parts = (

@@ -9,7 +9,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.definition.blade import Source
+from skinmesh.definition.blade import MeshRule, Source
 from skinmesh.frozen import freeze_array
 from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Stack
@@ -58,6 +58,8 @@ class BuildReport:
         Flat-pattern area of each skin region, from polygons on the developed skin.
     ply_areas : mapping of str to float, m²
         Flat-pattern area of each ply, all its layers together, at its exact ends.
+    mesh_rule : MeshRule, optional
+        What was asked of the mesh; None where that is not known.
     """
 
     warnings: tuple[str, ...] = ()
@@ -68,6 +70,7 @@ class BuildReport:
     stations: NDArray[np.float64] = field(default_factory=lambda: np.zeros(0))
     developed_areas: Mapping[str, float] = field(default_factory=dict)
     ply_areas: Mapping[str, float] = field(default_factory=dict)
+    mesh_rule: MeshRule | None = None
 
 
 @dataclass(frozen=True, eq=False)

@@ -8,11 +8,14 @@ import platform
 from collections.abc import Callable, Mapping
 from importlib.metadata import PackageNotFoundError, version
 from io import StringIO
+from math import degrees
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from skinmesh.definition.blade import MeshRule
+from skinmesh.definition.spanwise import Spanwise
 from skinmesh.laminate.code import LaminateCodes, laminate_codes
 from skinmesh.laminate.material import Material
 from skinmesh.mesh.measure import mass_properties, solid_mass
@@ -100,6 +103,7 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "hand": mesh.hand,
         "reference_surface": mesh.surface,
         "order": mesh.order,
+        "mesh": None if report.mesh_rule is None else _mesh_rule(report.mesh_rule),
         "counts": {
             "nodes": mesh.n_nodes,
             "elements": len(mesh.cells),
@@ -141,6 +145,29 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "versions": _versions(),
         "inputs": [{"file": source.file, "sha256": source.sha256} for source in mesh.sources],
     }
+
+
+def _mesh_rule(rule: MeshRule) -> dict[str, Any]:
+    """The part ``mesh`` of the blade file, with what it left to the defaults."""
+    return {
+        "size": _along(rule.size),
+        "across": dict(rule.across),
+        "order": rule.order,
+        "shape": rule.shape,
+        "surface": rule.surface,
+        "close_gap": _number(rule.close_gap),
+        "cut_at_ply_ends": rule.cut_at_ply_ends,
+        "chord_error": _number(rule.chord_error),
+        "turning": _number(degrees(rule.turning)),
+        "least_spacing": None if rule.least_spacing is None else _along(rule.least_spacing),
+    }
+
+
+def _along(quantity: Spanwise) -> float | list[Any]:
+    """A number, or pairs of z and value."""
+    if quantity.is_constant:
+        return _number(float(quantity.value[0]))
+    return _numbers(np.column_stack([quantity.z, quantity.value]))
 
 
 def _regions(mesh: ShellMesh, area: Mapping[str, float], mass: Mapping[str, float]) -> list[dict[str, Any]]:
