@@ -22,10 +22,11 @@ from rich.console import Console
 from sample_meshes import box_with_web, sandwich
 
 import skinmesh
-from skinmesh.commands.closing import CAUTION, print_closing, print_timings
+from skinmesh.commands.closing import CAUTION, print_closing, print_timings, significant
 from skinmesh.commands.main import main
 from skinmesh.commands.stages import Stages
 from skinmesh.errors import InputError, MeshError, MissingExtra, OutputError, Problem
+from skinmesh.mesh.measure import mass_properties
 from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
 from skinmesh.write.files import WrittenFile
 
@@ -107,11 +108,11 @@ def contents(directory: Path) -> dict[str, bytes]:
 def test_help_shows_every_command_and_the_exit_statuses(run) -> None:
     outcome = run("--help")
     assert outcome.status == 0
-    for word in ("new", "build", "schema", "Exit status: 0 done", "skinmesh new my-blade"):
+    for word in ("new", "build", "beam", "check", "schema", "Exit status: 0 done", "skinmesh new my-blade"):
         assert word in outcome.out
 
 
-@pytest.mark.parametrize("command", ["new", "build", "schema"])
+@pytest.mark.parametrize("command", ["new", "build", "beam", "check", "schema"])
 def test_help_of_a_command_has_an_example_and_fits_80_columns(run, command: str) -> None:
     outcome = run(command, "--help")
     assert outcome.status == 0
@@ -224,6 +225,84 @@ def test_without_plies_the_summary_says_that_the_decks_are_bare(run, small: Path
     outcome = run("build", "small.yaml")
     assert outcome.status == 0, outcome.err
     assert "no plies in the blade file" in outcome.out
+
+
+def test_a_thick_tube_is_heavier_by_its_surface_than_by_its_layers(run, small: Path) -> None:
+    """Ratio of the ring's area to perimeter × thickness: 1 − t/2R."""
+    (small / "small.csv").write_text(
+        "z_m, chord_m, twist_deg, pitch_axis, profile\n0, 0.4, 0, 0.5, ring\n4, 0.4, 0, 0.5, ring\n"
+    )
+    (small / "small.yaml").write_text(
+        re.sub(r"(?s)layout:.*?plies:", "layout: {}\nplies:", BLADE)
+        .replace('  foil: {naca: "4418", trailing_gap: 0.004}\n', "")
+        .replace("thickness: 1e-3, angle", "thickness: 20e-3, angle")
+        .split("  - {ply: cap")[0]
+        + "mesh: {size: 0.1}\n"
+    )
+    outcome = run("build", "small.yaml", "--formats", "vtu")
+    assert outcome.status == 0, outcome.err
+    said = outcome.out.replace("\xa0", "")
+    mass, solid = (
+        float(re.search(rf"^  {name} +([\d.]+) kg", said, re.MULTILINE)[1]) for name in ("mass", "mass as solids")
+    )
+    assert solid / mass == pytest.approx(1 - 0.02 / 0.4, rel=1e-3)
+    assert solid == pytest.approx(1900 * np.pi * (0.2**2 - 0.18**2) * 4.0, rel=1e-3)
+
+
+@pytest.mark.usefixtures("small")
+def test_the_summary_keeps_the_size_that_was_used(run) -> None:
+    for arguments, size in (([], 0.1), (["--size", "0.2"], 0.2)):
+        run("build", "small.yaml", "--formats", "vtu", *arguments)
+        assert json.loads(Path("small-mesh/small.summary.json").read_text())["mesh"]["size"] == size
+
+
+# --- beam and check --------------------------------------------------------------------------------------------------
+
+
+def test_beam_prints_and_writes_its_table(run, small: Path) -> None:
+    outcome = run("beam", "small.yaml")
+    assert outcome.status == 0, outcome.err
+    assert max(map(len, outcome.out.splitlines())) <= 80
+    assert not any(line != line.rstrip() for line in outcome.out.splitlines())
+    table = skinmesh.build(skinmesh.load("small.yaml"))
+    masses = {float(row) for row in re.findall(r"^(?:theory|mesh) +([\d.]+) +-?[\d.]+ ", outcome.out, re.MULTILINE)}
+    assert len(masses) >= 1
+    assert max(masses) == pytest.approx(mass_properties(table).mass, rel=0.02)
+    assert outcome.out.splitlines()[-3] == "small-beam.csv"
+    assert {path.name for path in small.iterdir()} == {"small.csv", "small.yaml", "small-beam.csv"}
+    assert " ".join(CAUTION.split()) in " ".join(outcome.out.split())
+
+
+def test_beam_says_where_it_cannot_write(run, small: Path) -> None:
+    outcome = run("beam", "small.yaml", "-o", "no-folder/table.csv")
+    assert outcome.status == 3
+    assert "no-folder/table.csv" in outcome.err
+    assert {path.name for path in small.iterdir()} == {"small.csv", "small.yaml"}
+
+
+def test_check_passes_a_build_and_fails_a_broken_one(run, small: Path) -> None:
+    run("build", EXAMPLES / "marram-24" / "marram-24.yaml", "-o", "mesh", "--formats", "vtu,inp")
+    outcome = run("check", "mesh", "--timings")
+    assert outcome.status == 0, outcome.out
+    assert not any(line != line.rstrip() for line in outcome.out.splitlines())
+    assert re.search(r"^\d+ passed, \d+ warn, 0 failed", outcome.out, re.MULTILINE)
+    assert re.search(r"in all +\d", outcome.out)
+    assert re.search(r"^writing +\d", outcome.out, re.MULTILINE)
+    summary = small / "mesh" / "marram-24.summary.json"
+    content = json.loads(summary.read_text())
+    content["mass_kg"] *= 1.01
+    summary.write_text(json.dumps(content))
+    outcome = run("check", "mesh")
+    assert outcome.status == 1
+    assert re.search(r"^fail +mass", outcome.out, re.MULTILINE)
+    assert '"fail"' in (small / "mesh" / "marram-24.checks.json").read_text()
+
+
+@pytest.mark.usefixtures("small")
+def test_check_of_a_folder_without_a_mesh_is_wrong_input(run) -> None:
+    outcome = run("check", ".")
+    assert outcome.status == 2
+    assert outcome.out == ""
 
 
 # --- mistakes --------------------------------------------------------------------------------------------------------
@@ -432,10 +511,20 @@ def test_the_schema_accepts_the_examples(run) -> None:
 # --- the summary by itself -------------------------------------------------------------------------------------------
 
 
-def closing(mesh: ShellMesh, capsys: pytest.CaptureFixture[str]) -> str:
+def closing(mesh: ShellMesh, capsys: pytest.CaptureFixture[str], *, solid_mass: float | None = None) -> str:
     console = Console(width=80, highlight=False, markup=False, emoji=False)
-    print_closing(console, mesh, directory=Path("out"), files=[WrittenFile("a.vtu", 1234567)], seconds=1.25)
+    files = [WrittenFile("a.vtu", 1234567)]
+    print_closing(console, mesh, directory=Path("out"), files=files, seconds=1.25, solid_mass=solid_mass)
     return capsys.readouterr().out
+
+
+@pytest.mark.parametrize(("share", "is_told"), [(0.994, True), (1.006, True), (0.996, False), (1.004, False)])
+def test_a_mass_that_curvature_changes_is_told(capsys: pytest.CaptureFixture[str], share: float, is_told: bool) -> None:
+    mesh = box_with_web(layers=sandwich())
+    mass = share * mass_properties(mesh).mass
+    said = closing(mesh, capsys, solid_mass=mass)
+    assert bool(re.search(rf"mass as solids +{re.escape(significant(mass))} kg", said)) == is_told
+    assert "as solids" not in closing(mesh, capsys)
 
 
 def test_warnings_are_counted_and_long_lists_are_cut(capsys: pytest.CaptureFixture[str]) -> None:

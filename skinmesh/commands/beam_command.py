@@ -7,15 +7,14 @@ from secrets import token_hex
 
 import click
 import numpy as np
-from rich.console import Console
+from rich.console import Console, RenderableType
 from rich.table import Table
 from rich.text import Text
 
 import skinmesh
 from skinmesh.beam.csvtext import beam_csv
 from skinmesh.beam.table import BeamTable, beam_difference, beam_table
-from skinmesh.beam.totals import BladeTotals
-from skinmesh.commands.closing import CAUTION, printable, significant
+from skinmesh.commands.closing import CAUTION, print_parts, printable, significant
 from skinmesh.commands.stages import shown_stages
 from skinmesh.errors import OutputError
 from skinmesh.show.beam_plot import beam_plot
@@ -72,10 +71,7 @@ def beam(blade_file: Path, output: Path | None, places: str, picture: bool) -> N
             _draw(written[-1], table)
         stages.end()
     console = Console(highlight=False, markup=False, emoji=False)
-    _print(console, table)
-    for file in written:
-        console.print(Text(printable(str(file))))
-    console.print(Text(CAUTION, style="dim"))
+    print_parts(console, *_shown(table), *(Text(printable(str(file))) for file in written), Text(CAUTION, style="dim"))
 
 
 def _write(path: Path, text: str) -> None:
@@ -100,9 +96,8 @@ def _draw(path: Path, table: BeamTable) -> None:
         unfinished.unlink(missing_ok=True)
 
 
-def _print(console: Console, table: BeamTable) -> None:
+def _shown(table: BeamTable) -> tuple[RenderableType, ...]:
     """Some sections, the largest differences, and the totals."""
-    console.print(Text(printable(table.title), style="bold"))
     shown = np.unique(np.linspace(0, len(table.z) - 1, SHOWN_ROWS).round().astype(int))
     road = table.exact
     rows = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
@@ -117,10 +112,7 @@ def _print(console: Console, table: BeamTable) -> None:
             "" if np.isnan(twist) else f"{twist:.2f}",
             str(road.n_cells[k]),
         )
-    console.print(rows)
-    console.print(_differences(table))
-    for name, totals in (("theory", table.exact_totals), ("mesh", table.mesh_totals)):
-        console.print(Text(f"  {name:7s} {_total_words(totals)}"))
+    return Text(printable(table.title), style="bold"), rows, _differences(table), _totals(table)
 
 
 def _differences(table: BeamTable) -> Table:
@@ -146,9 +138,12 @@ def _differences(table: BeamTable) -> Table:
     return rows
 
 
-def _total_words(totals: BladeTotals) -> str:
-    centre = ", ".join(f"{axis} {value:.3f}" for axis, value in zip("xyz", totals.centre, strict=True))
-    return (
-        f"{significant(totals.mass)} kg, centre at {centre} m, static moment about the root"
-        f" {significant(float(totals.first_moments[2]))} kg m"
-    )
+def _totals(table: BeamTable) -> Table:
+    rows = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
+    rows.add_column("whole blade")
+    for head in ("kg", "centre x m", "y m", "z m", "static moment at the root kg m"):
+        rows.add_column(head, justify="right")
+    for name, totals in (("theory", table.exact_totals), ("mesh", table.mesh_totals)):
+        moment = significant(float(totals.first_moments[2]))
+        rows.add_row(name, significant(totals.mass), *(f"{value:.3f}" for value in totals.centre), moment)
+    return rows

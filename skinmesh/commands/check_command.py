@@ -12,7 +12,7 @@ from rich.text import Text
 
 from skinmesh.check.finding import FAIL, NOT_MADE, PASS, WARN
 from skinmesh.check.run import CheckReport, check_directory, write_checks
-from skinmesh.commands.closing import CAUTION, print_timings, printable
+from skinmesh.commands.closing import CAUTION, grouped, print_parts, print_timings, printable
 from skinmesh.commands.stages import shown_stages
 
 CHECK_FAILED = 1
@@ -45,16 +45,20 @@ def check(context: click.Context, directory: Path, inputs: tuple[Path, ...], tim
     """
     start = perf_counter()
     with shown_stages() as stages:
-        report = check_directory(directory, input_folders=[*inputs, Path.cwd()], progress=stages.begin)
+        report = check_directory(directory, input_folders=[*inputs, Path.cwd()], progress=stages.part(0.0, 0.95))
+        stages.begin("writing", 0.95)
         paths = write_checks(report)
         stages.end()
     console = Console(highlight=False, markup=False, emoji=False, soft_wrap=False)
     if not console.is_terminal:
         console = Console(highlight=False, markup=False, emoji=False, width=PIPE_WIDTH)
     print_report(console, report)
-    console.print(Text(f"Written: {', '.join(printable(str(path)) for path in paths)}"))
-    console.print(f"Done in {perf_counter() - start:.1f} s.")
-    console.print(Text(CAUTION, style="dim"))
+    print_parts(
+        console,
+        Text(f"Written: {', '.join(printable(str(path)) for path in paths)}"),
+        Text(f"Done in {perf_counter() - start:.1f} s."),
+        Text(CAUTION, style="dim"),
+    )
     if timings:
         print_timings(console, stages.finished)
     if report.has_failed:
@@ -70,7 +74,6 @@ def print_report(console: Console, report: CheckReport) -> None:
     report : CheckReport
     """
     mesh = report.built.mesh
-    console.print(Text(printable(f"{mesh.title}: {len(mesh.cells)} elements"), style="bold"))
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
     table.add_column("verdict", no_wrap=True)
     table.add_column("check", no_wrap=True)
@@ -88,9 +91,13 @@ def print_report(console: Console, report: CheckReport) -> None:
             Text(printable(finding.where)),
         )
         previous = finding.check
-    console.print(table)
     counts = report.counts
     words = (f"{counts[PASS]} passed", f"{counts[WARN]} warn", f"{counts[FAIL]} failed", f"{counts[NOT_MADE]} not made")
-    console.print(Text(", ".join(words) + ".", style="bold red" if report.has_failed else "bold"))
     if counts[NOT_MADE]:
-        console.print("A check that could not be made is no pass.")
+        words = (*words[:-1], f"{words[-1]}, which is no pass")
+    print_parts(
+        console,
+        Text(printable(f"{mesh.title}: {grouped(len(mesh.cells))} elements"), style="bold"),
+        table,
+        Text(", ".join(words) + ".", style="bold red" if report.has_failed else "bold"),
+    )

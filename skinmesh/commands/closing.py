@@ -17,10 +17,13 @@ from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.files import WrittenFile
 
 MOST_WARNINGS = 10
+NOTABLE_CURVATURE = 0.005
+"""Share of the mass from which on that of the curved, solid layers is told beside it."""
 CAUTION = (
     "An aid only: have model and results verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and the local "
     "codes. skinmesh certifies nothing."
 )
+SOLIDS_MEAN = "curvature counted, as CalculiX finds it"
 NARROW_SPACE = "\N{NO-BREAK SPACE}"
 
 
@@ -34,7 +37,7 @@ def printable(text: str) -> str:
 
 
 def grouped(number: int) -> str:
-    """A count with its thousands apart, never broken at a line's end.
+    """A count with its thousands apart.
 
     >>> grouped(1234567).split()
     ['1', '234', '567']
@@ -69,6 +72,7 @@ def print_closing(
     directory: Path,
     files: Sequence[WrittenFile],
     seconds: float,
+    solid_mass: float | None = None,
 ) -> None:
     """Print what was built and where it lies.
 
@@ -80,11 +84,13 @@ def print_closing(
     files : sequence of WrittenFile
     seconds : float
         Time from the start of the command.
+    solid_mass : float, optional, kg
+        Mass of the layers as solids, where it is known; printed where it is another than that of the surface.
     """
-    _print(
+    print_parts(
         console,
         Text(printable(mesh.title), style="bold"),
-        _facts(mesh),
+        _facts(mesh, solid_mass),
         *_warnings(mesh),
         Text(f"{printable(str(directory))}/"),
         _files(files),
@@ -102,18 +108,24 @@ def print_timings(console: Console, stages: Sequence[Stage]) -> None:
         peak = "?" if stage.peak_bytes is None else f"{stage.peak_bytes / 1e6:.0f}"
         table.add_row(Text(stage.name), f"{stage.seconds:.2f}", peak)
     table.add_row("in all", f"{sum(stage.seconds for stage in stages):.2f}", "")
-    _print(console, table)
+    print_parts(console, table)
 
 
-def _print(console: Console, *parts: RenderableType) -> None:
-    """Print without the blanks that tables put at the ends of lines."""
+def print_parts(console: Console, *parts: RenderableType) -> None:
+    """Print without the blanks that tables put at the ends of lines.
+
+    Parameters
+    ----------
+    console : rich Console
+    *parts : what rich can print
+    """
     with console.capture() as captured:
         for part in parts:
             console.print(part)
     click.echo("\n".join(line.rstrip() for line in captured.get().splitlines()), color=True)
 
 
-def _facts(mesh: ShellMesh) -> Table:
+def _facts(mesh: ShellMesh, solid_mass: float | None) -> Table:
     areas = element_areas(mesh)
     web_area = float(areas[np.array([region.kind == "web" for region in mesh.regions])[mesh.region]].sum())
     shape = "quadrilaterals" if mesh.n_sides == 4 else "triangles"
@@ -135,6 +147,8 @@ def _facts(mesh: ShellMesh) -> Table:
     properties = mass_properties(mesh)
     centre = ", ".join(f"{axis} {value:.3f}" for axis, value in zip("xyz", properties.centre, strict=True))
     table.add_row("  mass", f"{significant(properties.mass)} kg", f"centre at {centre} m")
+    if solid_mass is not None and abs(solid_mass - properties.mass) > NOTABLE_CURVATURE * properties.mass:
+        table.add_row("  mass as solids", f"{significant(solid_mass)} kg", SOLIDS_MEAN)
     table.add_row("  stacks", grouped(len(mesh.stacks)), _range_of_stacks(mesh))
     if mesh.report.ply_end_move > 0:
         move = f"{mesh.report.ply_end_move * 1e3:.0f} mm"

@@ -159,7 +159,14 @@ def build(
         )
         stages.end()
     console = Console(highlight=False, markup=False, emoji=False)
-    print_closing(console, mesh, directory=directory, files=files, seconds=perf_counter() - start)
+    print_closing(
+        console,
+        mesh,
+        directory=directory,
+        files=files,
+        seconds=perf_counter() - start,
+        solid_mass=_solid_mass(directory / f"{mesh.stem}.summary.json"),
+    )
     if timings:
         print_timings(console, stages.finished)
 
@@ -208,6 +215,14 @@ def main(arguments: Sequence[str] | None = None) -> NoReturn:
         _say_error(f"{error}\nNothing was written.")
         sys.exit(WRONG_INPUT)
     sys.exit(status if isinstance(status, int) else DONE)
+
+
+def _solid_mass(summary: Path) -> float | None:
+    """Mass of the layers as solids from the summary just written, since working it out again takes a while."""
+    try:
+        return float(json.loads(summary.read_text(encoding="utf-8"))["solid_mass_kg"])
+    except OSError:  # moved away meanwhile: no reason to fail a finished build
+        return None
 
 
 def _say_error(text: str) -> None:
