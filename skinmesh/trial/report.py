@@ -28,6 +28,7 @@ LOOK = 0.05
 SOFT = 0.1  # of the largest in-plane shear modulus of a stack
 NOTABLE_DISTORTION = 0.01
 NOTABLE_LEFT = 0.02
+NOTABLE_SHARE = 1e-3
 _DIGITS = 7
 
 
@@ -151,6 +152,8 @@ def _case_remark(case: StaticCase | ModeCase, z: Floats) -> str:
     if isinstance(case, StaticCase) and abs(parts["left"]) > NOTABLE_LEFT:
         low, high = place_of_difference(case, z)
         where = f" That arises at z = {low:.2f} to {high:.2f} m for the most part."
+    if isinstance(case, ModeCase) and 1.0 - case.rigid_share > NOTABLE_SHARE:
+        where = f" Of its squared motion {1.0 - case.rigid_share:.1%} is a change of the sections' form."
     return (
         f"{name[0].upper()}{name[1:]}: {case.difference:+.1%} against Euler–Bernoulli theory. Alone,"
         f" {', '.join(words) or 'no refinement of it'} would make a difference;"
