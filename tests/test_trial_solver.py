@@ -202,7 +202,7 @@ def test_a_straight_blade_of_constant_section_with_two_webs(tmp_path: Path) -> N
 @needs_ccx
 @pytest.mark.slow
 def test_the_demonstration_blade_coarse(tmp_path: Path) -> None:
-    blade = blades.demonstration(mesh=blades.rule(0.6, close_gap=0.012))
+    blade = blades.demonstration(mesh=blades.rule(0.8, turning=0.7, chord_error=0.02, close_gap=0.012))
     found = tried(blade, tmp_path)
     assert failures(found) == ()
     flap, edge, torque, weight = found.statics
