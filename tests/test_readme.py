@@ -9,6 +9,7 @@ import subprocess
 import sys
 import time
 from collections.abc import Callable
+from itertools import dropwhile
 from pathlib import Path
 
 import pytest
@@ -71,6 +72,26 @@ def test_the_two_commands_print_what_the_page_says(shell: Shell) -> None:
     assert len(masked(shown)) > 20
 
 
+@pytest.mark.parametrize("command", ["check", "beam"])
+def test_other_commands_print_the_lines_that_the_page_shows(shell: Shell, command: str) -> None:
+    """A line of the page may end before that of the command, and ``…`` stands for lines left out."""
+    (block,) = [text for text in SHELL if text.startswith(f"skinmesh {command} ")]
+    (shown,) = re.findall(rf"```sh\n{re.escape(block)}```.*?```text\n(.*?)```", README, re.DOTALL)
+    done = shell(block)
+    assert done.returncode == 0, done.stderr
+    said = iter([*masked(done.stdout), ""])
+    is_cut = False
+    for line in masked(shown):
+        if line == "…":
+            is_cut = True
+            continue
+        if is_cut:
+            said = dropwhile(lambda other, line=line: not other.startswith(line), said)
+        assert next(said).startswith(line)
+        is_cut = False
+    assert len(masked(shown)) > 10
+
+
 @pytest.mark.solver
 @pytest.mark.slow
 @pytest.mark.skipif(not shutil.which(SOLVER), reason="CalculiX is not installed")
@@ -117,7 +138,11 @@ def test_the_parts_of_the_blade_file_make_a_blade(tmp_path: Path) -> None:
 
 
 def test_every_shell_and_python_block_is_run_by_a_test() -> None:
-    run = [SET_UP, two_commands(), *[text for text in SHELL if SOLVER in text]]
+    run = [
+        SET_UP,
+        two_commands(),
+        *[text for text in SHELL if SOLVER in text or re.match("skinmesh (check|beam) ", text)],
+    ]
     assert sorted(run) == sorted(SHELL)
 
 

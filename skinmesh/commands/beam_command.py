@@ -107,7 +107,7 @@ def _shown(table: BeamTable) -> tuple[RenderableType, ...]:
         twist = np.degrees(road.structural_twist[k])
         rows.add_row(
             f"{table.z[k]:.3f}",
-            significant(float(road.mass[k])),
+            f"{road.mass[k]:.2f}",
             *(f"{value:.3e}" for value in (road.axial[k], *road.principal[k], road.torsion[k])),
             "" if np.isnan(twist) else f"{twist:.2f}",
             str(road.n_cells[k]),

@@ -97,7 +97,7 @@ def print_report(console: Console, report: CheckReport) -> None:
         words = (*words[:-1], f"{words[-1]}, which is no pass")
     print_parts(
         console,
-        Text(printable(f"{mesh.title}: {grouped(len(mesh.cells))} elements"), style="bold"),
+        Text(f"{printable(mesh.title)}: {grouped(len(mesh.cells))} elements", style="bold"),
         table,
         Text(", ".join(words) + ".", style="bold red" if report.has_failed else "bold"),
     )
