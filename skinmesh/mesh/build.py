@@ -13,6 +13,13 @@ from skinmesh.definition.names import resolve_cover
 from skinmesh.mesh.assemble import assemble_mesh
 from skinmesh.mesh.closing import closing_elements
 from skinmesh.mesh.inner_face import find_narrow_elements, find_thick_elements
+from skinmesh.mesh.keep import (
+    check_kept_rule,
+    keep_stack_numbers,
+    kept_elements,
+    kept_layout,
+    with_kept_numbers,
+)
 from skinmesh.mesh.midsurface import move_to_middle
 from skinmesh.mesh.plane import cut_patches, mesh_patches
 from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
@@ -24,7 +31,7 @@ from skinmesh.surface.loft import loft_surface
 Progress = Callable[[str, float], None]
 
 
-def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> ShellMesh:
+def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progress: Progress | None = None) -> ShellMesh:
     """Build the layered shell mesh of a blade.
 
     Writes no file and leaves no global state behind; works off the main thread.
@@ -32,6 +39,9 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     Parameters
     ----------
     blade : BladeDefinition
+    keep : ShellMesh, optional
+        An earlier mesh of the same layout, whose numbers, sets and connectivity are to stay: each node keeps its
+        parametric coordinates and goes to their place on the new surface. The mesh kernel is not run.
     progress : callable, optional
         Called with the name of each stage and the share of the work done when it begins.
 
@@ -42,7 +52,8 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     Raises
     ------
     InputError
-        The layout does not fit on the skin, or the mesh would be far too large.
+        The layout does not fit on the skin, the mesh would be far too large, or the layout is not that of the mesh to
+        keep.
     MeshError
         The mesh kernel did something other than what it was asked.
     """
@@ -50,13 +61,17 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
     tell("surface", 0.0)
     surface = loft_surface(blade)
     tell("skin", 0.05)
-    skin, warnings = unroll_skin(blade, surface)
+    if keep is not None:
+        check_kept_rule(blade, keep)
+    skin, warnings = unroll_skin(blade, surface, kept=None if keep is None else kept_layout(keep))
     tell("plies", 0.2)
 
     def covered(ply: PlyRule) -> frozenset[str]:
         return frozenset().union(*(resolve_cover(name, blade.layout) for name in ply.covers))
 
     stacks = cover_strips(blade, skin, covered)
+    if keep is not None:
+        stacks = keep_stack_numbers(stacks, keep)
     report = BuildReport(
         warnings=(*warnings, *stacks.warnings),
         ply_end_move=stacks.largest_move,
@@ -69,18 +84,21 @@ def build_mesh(blade: BladeDefinition, *, progress: Progress | None = None) -> S
         mesh_rule=blade.mesh,
     )
     tell("mesh", 0.3)
-    parts = (
-        mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape),
-        closing_elements(skin, shape=blade.mesh.shape),
-    )
+    closing = closing_elements(skin, shape=blade.mesh.shape)
+    if keep is None:
+        regular = mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape)
+    else:
+        regular = kept_elements(keep, skin)
     tell("elements", 0.5)
-    mesh = assemble_mesh(blade, skin, parts, stacks, report)
+    mesh = assemble_mesh(blade, skin, (regular, closing), stacks, report)
     if blade.mesh.surface == "mid":
         tell("mid surface", 0.65)
         mesh, limited = move_to_middle(mesh)
         mesh = replace(mesh, report=replace(mesh.report, warnings=mesh.report.warnings + limited))
     tell("checks", 0.8)
     mesh = _with_thick_elements(mesh)
+    if keep is not None:
+        mesh = with_kept_numbers(mesh, keep)
     tell("done", 1.0)
     return mesh
 

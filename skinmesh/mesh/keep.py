@@ -9,7 +9,6 @@ from numpy.typing import NDArray
 
 from skinmesh.definition.blade import BladeDefinition
 from skinmesh.errors import InputError, MeshError, Problem
-from skinmesh.mesh.closing import closing_elements
 from skinmesh.mesh.plane import PlaneMesh, with_middles
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
 from skinmesh.mesh.shellmesh import ShellMesh
@@ -96,8 +95,8 @@ def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
         raise InputError(problems)
 
 
-def kept_parts(old: ShellMesh, skin: SkinMap) -> tuple[PlaneMesh, ...]:
-    """The elements of an earlier mesh in the lattice of the skin map; gmsh has nothing to do.
+def kept_elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:
+    """The elements of an earlier mesh in the lattice of the skin map, those of the closings left out.
 
     Parameters
     ----------
@@ -107,32 +106,32 @@ def kept_parts(old: ShellMesh, skin: SkinMap) -> tuple[PlaneMesh, ...]:
 
     Returns
     -------
-    tuple of PlaneMesh
+    PlaneMesh
     """
     corners = old.cells[:, : old.n_sides]
     if old.hand == "counter-clockwise":
         corners = corners[:, [0, *range(old.n_sides - 1, 0, -1)]]
-    level = np.interp(old.row, skin.levels.row, np.arange(len(skin.levels.row)))[corners]
-    seam, sheet = old.seam[corners], old.sheet[old.cells].max(axis=1)
+    node_level = np.interp(old.row[: old.n_corners], skin.levels.row, np.arange(len(skin.levels.row)))
+    closing = np.interp(node_level, np.arange(len(skin.closing)), skin.closing)
     last = skin.n_seams - 1
-    names = [region.name for region in old.regions]
-    is_base = old.region == (names.index("trailing base") if "trailing base" in names else -1)
-    strip = np.minimum(np.ceil(old.seam[old.cells].max(axis=1) - 1e-9).astype(int) - 1, last - 1)
-    strip[is_base] = skin.base_strip
+    kinds = np.array([region.kind for region in old.regions])[old.region]
+    seam = old.seam[corners]
+    # the mid nodes of an element tell its strip even where one side of it is the closed edge, which is seam 0
+    strip = np.clip(np.ceil(old.seam[old.cells[:, old.n_sides :]].max(axis=1) - 1e-9).astype(int) - 1, 0, last - 1)
+    sheet = np.full(len(corners), SKIN)
     for web in skin.webs:
-        own = sheet == web.sheet
-        strip[own] = skin.web_strip(web)
-        at_foot = own[:, None] & (old.sheet[corners] == SKIN)
-        # the two feet are told apart by their side of the leading edge
-        nose = skin.seams.labels.index("leading edge")
-        seam = np.where(at_foot, np.where(seam > nose, 1.0, 0.0), seam)
-    wraps = (strip[:, None] == last - 1) & (sheet[:, None] == SKIN) & (seam == 0.0)
-    seam = np.where(wraps, float(last), np.where(is_base[:, None] & (seam == 0.0), last + 1.0, seam))
-    closing = np.interp(level, np.arange(len(skin.closing)), skin.closing)
-    is_closing = is_base & np.any((closing > 0.0) & (closing < 1.0), axis=1)
-    keep = ~is_closing
-    regular = PlaneMesh(with_middles(level[keep]), with_middles(seam[keep]), sheet[keep], strip[keep])
-    return regular, closing_elements(skin, shape="quad" if old.n_sides == 4 else "triangle")
+        own = np.flatnonzero(old.region == [region.name for region in old.regions].index(web.name))
+        sheet[own], strip[own] = web.sheet, skin.web_strip(web)
+        at_foot = old.sheet[corners[own]] == SKIN
+        seam[own] = np.where(at_foot, np.where(seam[own] == web.suction_seam, 1.0, 0.0), seam[own])
+    base = np.flatnonzero(kinds == "base")
+    strip[base] = skin.base_strip
+    seam[base] = np.where(seam[base] == 0.0, last + 1.0, seam[base])
+    wrapped = np.flatnonzero((strip == last - 1) & (sheet == SKIN))
+    seam[wrapped] = np.where(seam[wrapped] == 0.0, float(last), seam[wrapped])
+    keep = np.ones(len(corners), dtype=bool)
+    keep[base] = ~np.any((closing[corners[base]] > 0.0) & (closing[corners[base]] < 1.0), axis=1)
+    return PlaneMesh(with_middles(node_level[corners[keep]]), with_middles(seam[keep]), sheet[keep], strip[keep])
 
 
 def keep_stack_numbers(table: StackTable, old: ShellMesh) -> StackTable:
@@ -163,7 +162,7 @@ def keep_stack_numbers(table: StackTable, old: ShellMesh) -> StackTable:
 
 
 def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
-    """Give a rebuilt mesh the node and element numbers of the old one.
+    """Give a rebuilt mesh the node and element numbers of the old one, and say where its divisions have become poor.
 
     Raises
     ------
@@ -172,7 +171,9 @@ def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
     """
     if not np.array_equal(mesh.cells, old.cells):
         raise MeshError("the rebuilt mesh has another connectivity than the one to keep")
-    return replace(mesh, node_number=old.node_number, element_number=old.element_number)
+    _, warnings = compare_quality(old, mesh)
+    report = replace(mesh.report, warnings=mesh.report.warnings + warnings)
+    return replace(mesh, node_number=old.node_number, element_number=old.element_number, report=report)
 
 
 def compare_quality(old: ShellMesh, new: ShellMesh) -> tuple[KeptQuality, tuple[str, ...]]:

@@ -1,0 +1,169 @@
+"""A rebuild under the numbers of an earlier mesh."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from pathlib import Path
+from time import perf_counter
+
+import gmsh
+import numpy as np
+import pytest
+from blades import demonstration, rule
+from topology import consistent_orientation, outward_share, stray_free_edges
+
+import skinmesh
+from skinmesh.check.reading import read_built_mesh
+from skinmesh.definition.spanwise import Spanwise, constant
+from skinmesh.errors import InputError
+from skinmesh.mesh.build import build_mesh
+from skinmesh.mesh.keep import kept_layout
+from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.skin.unroll import unroll_skin
+from skinmesh.surface.loft import loft_surface
+
+ROOT = Path(__file__).parents[1]
+BLADES = [
+    "examples/marram-24/marram-24.yaml",
+    "examples/tidal-6/tidal-6.yaml",
+    "tests/published/research-rotor/research-rotor.yaml",
+]
+
+
+def wider_outboard(blade):
+    table = blade.stations
+    chord = np.where(table.z > table.z[-1] * 2 / 3, 1.07 * table.chord, table.chord)
+    return replace(blade, stations=replace(table, chord=chord))
+
+
+def assert_same_numbers(old: ShellMesh, new: ShellMesh) -> None:
+    for name in ("cells", "region", "sheet", "row", "seam", "node_number", "element_number"):
+        np.testing.assert_array_equal(getattr(old, name), getattr(new, name))
+    assert old.regions == new.regions
+    assert old.node_sets.keys() == new.node_sets.keys()
+    for name in old.node_sets:
+        np.testing.assert_array_equal(old.node_sets[name], new.node_sets[name])
+
+
+@pytest.mark.parametrize("path", BLADES)
+def test_chord_seven_per_cent_wider_outboard(path, tmp_path):
+    blade = skinmesh.load(ROOT / path)
+    skinmesh.write(build_mesh(blade), tmp_path)
+    old = read_built_mesh(tmp_path).mesh
+    changed = wider_outboard(blade)
+    new = build_mesh(changed, keep=old)
+    assert_same_numbers(old, new)
+    # the nodes lie where a skin map made for the new blade has them
+    surface = loft_surface(changed)
+    skin, _ = unroll_skin(changed, surface, kept=kept_layout(old))
+    on_skin = (new.sheet == 0) & (new.seam <= skin.n_seams - 1)
+    wanted = skin.points(new.sheet, new.row, new.seam)
+    assert np.abs(new.points - wanted)[on_skin].max() < 1e-9
+    # and those away from the trailing edge on the surface itself
+    inner = on_skin & (new.seam >= 1.0) & (new.seam <= skin.n_seams - 2.0)
+    t = skin.surface_parameter(new.row[inner], new.seam[inner])
+    assert np.abs(surface.points(new.points[inner, 2], t) - new.points[inner]).max() < 1e-9
+    assert stray_free_edges(new) == 0
+    assert consistent_orientation(new)
+    assert outward_share(new) == 1.0
+
+
+CHANGES = {
+    "length": lambda b: replace(b, stations=replace(b.stations, z=b.stations.z * 1.03)),
+    "twist": lambda b: replace(b, stations=replace(b.stations, twist=b.stations.twist + 0.03)),
+    "web span": lambda b: replace(
+        b, layout=replace(b.layout, webs=tuple(replace(w, span=(3.3, 20.0)) for w in b.layout.webs))
+    ),
+    "cap width": lambda b: replace(
+        b, layout=replace(b.layout, caps=(replace(b.layout.caps[0], width=Spanwise([0, 24], [0.36, 0.1])),))
+    ),
+    "profile": lambda b: replace(b, profiles={**b.profiles, "thin": b.profiles["mid"]}),
+    "size": lambda b: replace(b, mesh=replace(b.mesh, size=constant(0.3))),
+    "plies": lambda b: replace(b, plies=b.plies[:-2] + b.plies[-1:]),
+}
+
+
+def moved_web_ends(blade):
+    """Web ends clear of the stations, so that a change of span does not part what was one row."""
+    webs = tuple(replace(web, span=(3.0, 20.5)) for web in blade.layout.webs)
+    return replace(blade, layout=replace(blade.layout, webs=webs))
+
+
+@pytest.mark.parametrize("name", CHANGES)
+@pytest.mark.parametrize("shape", ["quad", "triangle"])
+def test_other_changes_keep_the_numbers_too(name, shape):
+    blade = moved_web_ends(demonstration(mesh=rule(0.2, close_gap=0.012, shape=shape)))
+    old = build_mesh(blade)
+    new = build_mesh(CHANGES[name](blade), keep=old)
+    assert_same_numbers(old, new)
+    assert stray_free_edges(new) == 0
+    assert outward_share(new) == 1.0
+
+
+def test_an_unchanged_blade_gives_the_same_mesh():
+    for hand in ("clockwise", "counter-clockwise"):
+        blade = demonstration(hand=hand)
+        old = build_mesh(blade)
+        new = build_mesh(blade, keep=old)
+        assert_same_numbers(old, new)
+        np.testing.assert_array_equal(old.points, new.points)
+        np.testing.assert_array_equal(old.stack, new.stack)
+
+
+def test_stack_numbers_stay_where_their_content_stays():
+    blade = demonstration(mesh=rule(0.2, close_gap=0.012))
+    old = build_mesh(blade)
+    thicker = replace(blade, plies=(*blade.plies[:-1], replace(blade.plies[-1], thickness=constant(0.003))))
+    new = build_mesh(thicker, keep=old)
+    before = {stack.content_name: i for i, stack in enumerate(old.stacks)}
+    for i in np.unique(new.stack):
+        name = new.stacks[i].content_name
+        assert before.get(name, i) == i
+    assert sum(new.stacks[i].content_name not in before for i in np.unique(new.stack)) > 0
+    in_web = np.array([region.kind == "web" for region in new.regions])[new.region]
+    np.testing.assert_array_equal(old.stack[~in_web], new.stack[~in_web])
+
+
+def test_the_mesh_kernel_is_not_run(monkeypatch):
+    blade = demonstration(mesh=rule(0.3, close_gap=0.012))
+    old = build_mesh(blade)
+
+    def never(*_args, **_kwargs):
+        raise AssertionError("gmsh was started")
+
+    monkeypatch.setattr(gmsh, "initialize", never)
+    build_mesh(wider_outboard(blade), keep=old)
+
+
+def test_another_layout_is_refused_with_what_changed():
+    blade = demonstration(mesh=rule(0.3, close_gap=0.012))
+    old = build_mesh(blade)
+    one_web = replace(blade, layout=replace(blade.layout, webs=blade.layout.webs[:1]))
+    with pytest.raises(InputError, match=r"no longer there: .*aft web"):
+        build_mesh(one_web, keep=old)
+    for change, word in (({"order": 1}, "order"), ({"shape": "triangle"}, "shape")):
+        with pytest.raises(InputError, match=word):
+            build_mesh(replace(blade, mesh=replace(blade.mesh, **change)), keep=old)
+
+
+def test_poor_divisions_are_told():
+    blade = demonstration(mesh=rule(0.3, close_gap=0.012))
+    old = build_mesh(blade)
+    table = blade.stations
+    slender = replace(blade, stations=replace(table, chord=np.where(table.z > 12, 0.45 * table.chord, table.chord)))
+    new = build_mesh(slender, keep=old)
+    assert any(text.startswith("kept divisions:") for text in new.report.warnings)
+
+
+def test_mesh_stage_of_a_rebuild_is_a_small_part_of_a_fresh_one():
+    """At the default size of Marram 24, some 14 000 elements; the least of five runs each."""
+    blade = demonstration(mesh=rule(0.12, close_gap=0.012))
+    old = build_mesh(blade)
+    fresh, kept = (min(mesh_stage(blade, keep) for _ in range(5)) for keep in (None, old))
+    assert kept < fresh / 5.0
+
+
+def mesh_stage(blade, keep) -> float:
+    times = {}
+    build_mesh(blade, keep=keep, progress=lambda stage, _done: times.setdefault(stage, perf_counter()))
+    return times["elements"] - times["mesh"]
