@@ -10,26 +10,36 @@ make_environment .venv-test
 pip_install .venv-test -e '.[test]'
 bin=$PWD/.venv-test/bin
 
-# pyNastran wants an older NumPy than skinmesh has, so it reads our files back from an environment of its own.
-if "$bin/python" -c 'import sys; sys.exit(sys.version_info >= (3, 13))'; then
-    make_environment .venv-pynastran
-    pip_install .venv-pynastran pyNastran 'numpy<2'
-    export SKINMESH_PYNASTRAN=$PWD/.venv-pynastran/bin/python
-else
+# try_environment FOLDER ARGUMENT...: an environment of its own for what cannot stand beside skinmesh, or is not meant to.
+# Where it cannot be had, the tests that want it are skipped.
+try_environment() {
+    local folder=$1
+    shift
+    if ! (make_environment "$folder" && pip_install "$folder" "$@"); then
+        say "No ${folder#.venv-} here: the tests that want it are skipped."
+        return 1
+    fi
+}
+
+# Reads our bulk data back; wants an older NumPy than skinmesh has.
+if ! "$bin/python" -c 'import sys; sys.exit(sys.version_info >= (3, 13))'; then
     say "pyNastran's NumPy has no wheel for this Python: the tests that read bulk data back with it are skipped."
+elif try_environment .venv-pynastran pyNastran 'numpy<2'; then
+    export SKINMESH_PYNASTRAN=$PWD/.venv-pynastran/bin/python
 fi
-
 # A second solver; its wheel asks for a newer Python than it needs.
-make_environment .venv-nastran95
-pip_install .venv-nastran95 numpy
-pip_install .venv-nastran95 --no-deps --ignore-requires-python nastran95
-export SKINMESH_NASTRAN95=$PWD/.venv-nastran95/bin/python
-
+if try_environment .venv-nastran95 --no-deps --ignore-requires-python --only-binary :all: numpy nastran95; then
+    export SKINMESH_NASTRAN95=$PWD/.venv-nastran95/bin/python
+fi
+# Plane finite elements, to set sections beside; brings half a gigabyte of packages.
+if try_environment .venv-sections sectionproperties; then
+    export SKINMESH_SECTIONPROPERTIES=$PWD/.venv-sections/bin/python
+fi
 # A package that carries some 2 000 profile files; nothing of it is imported.
-make_environment .venv-airfoils
-pip_install .venv-airfoils --no-deps AeroSandbox
-SKINMESH_AIRFOILS=$(find "$PWD/.venv-airfoils" -name '*.dat' -printf '%h\n' | sort | uniq -c | sort -rn | awk 'NR == 1 {print $2}')
-export SKINMESH_AIRFOILS
+if try_environment .venv-airfoils --no-deps AeroSandbox; then
+    SKINMESH_AIRFOILS=$(find "$PWD/.venv-airfoils" -name '*.dat' -printf '%h\n' | sort | uniq -c | sort -rn | awk 'NR == 1 {print $2}')
+    export SKINMESH_AIRFOILS
+fi
 
 status=0
 step() {
