@@ -25,9 +25,11 @@ import click
 from rich.console import Console
 
 import skinmesh
+from skinmesh.check.reading import read_built_mesh
 from skinmesh.commands.beam_command import beam
 from skinmesh.commands.check_command import check
 from skinmesh.commands.closing import print_closing, print_timings, printable
+from skinmesh.commands.keeping import print_kept
 from skinmesh.commands.stages import shown_stages
 from skinmesh.commands.starter import write_starter
 from skinmesh.definition.schema import json_schema
@@ -123,10 +125,22 @@ def new(directory: Path, table: Path | None, profiles: Path | None) -> None:
     callback=_length,
     help="Target edge length in metres, everywhere, instead of the blade file's mesh.size.",
 )
+@click.option(
+    "--keep",
+    metavar="OLD_DIR",
+    type=click.Path(path_type=Path),
+    help="Folder of an earlier build of the same layout, whose node and element numbers, sets and connectivity stay.",
+)
 @click.option("--pictures", is_flag=True, help="Also draw regions, stacks, thickness and e1 (PNG).")
 @click.option("--timings", is_flag=True, help="Also print time and peak memory of each stage.")
 def build(
-    blade_file: Path, output: Path | None, formats: tuple[str, ...], size: float | None, pictures: bool, timings: bool
+    blade_file: Path,
+    output: Path | None,
+    formats: tuple[str, ...],
+    size: float | None,
+    keep: Path | None,
+    pictures: bool,
+    timings: bool,
 ) -> None:
     """Build the layered shell mesh of BLADE.yaml and write it.
 
@@ -138,6 +152,7 @@ def build(
       skinmesh build marram-24.yaml
       skinmesh build marram-24.yaml -o fine --size 0.05 --formats vtu,inp
       skinmesh build marram-24.yaml --pictures
+      skinmesh build marram-24.yaml -o after --keep before
     """
     start = perf_counter()
     if pictures:
@@ -149,7 +164,8 @@ def build(
         _refuse_file_as_directory(directory)
         if size is not None:
             blade = replace(blade, mesh=replace(blade.mesh, size=constant(size)))
-        mesh = skinmesh.build(blade, progress=stages.part(_BUILD, _FILES))
+        old = None if keep is None else read_built_mesh(keep).mesh
+        mesh = skinmesh.build(blade, keep=old, progress=stages.part(_BUILD, _FILES))
         files = skinmesh.write(
             mesh,
             directory,
@@ -167,6 +183,8 @@ def build(
         seconds=perf_counter() - start,
         solid_mass=_solid_mass(directory / f"{mesh.stem}.summary.json"),
     )
+    if old is not None and keep is not None:
+        print_kept(console, old, mesh, directory=keep)
     if timings:
         print_timings(console, stages.finished)
 

@@ -116,8 +116,9 @@ def kept_elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:
     last = skin.n_seams - 1
     kinds = np.array([region.kind for region in old.regions])[old.region]
     seam = old.seam[corners]
-    # the mid nodes of an element tell its strip even where one side of it is the closed edge, which is seam 0
-    strip = np.clip(np.ceil(old.seam[old.cells[:, old.n_sides :]].max(axis=1) - 1e-9).astype(int) - 1, 0, last - 1)
+    low, high = seam.min(axis=1), seam.max(axis=1)
+    # an element at a closed edge, which is seam 0, spans all seams if it belongs to the last gap
+    strip = np.where(high - low > 1.0 + 1e-9, last - 1, np.maximum(np.ceil(high - 1e-9).astype(int) - 1, 0))
     sheet = np.full(len(corners), SKIN)
     for web in skin.webs:
         own = np.flatnonzero(old.region == [region.name for region in old.regions].index(web.name))
@@ -169,11 +170,14 @@ def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
     MeshError
         The connectivity came out differently, which no change of geometry can explain.
     """
-    if not np.array_equal(mesh.cells, old.cells):
+    # files of a first-order mesh hold no mid nodes; those of the keyword deck follow from the corner nodes
+    if not np.array_equal(mesh.connectivity, old.connectivity):
         raise MeshError("the rebuilt mesh has another connectivity than the one to keep")
+    n = old.n_nodes
+    node_number = np.concatenate([old.node_number[:n], mesh.node_number[n:]])
     _, warnings = compare_quality(old, mesh)
     report = replace(mesh.report, warnings=mesh.report.warnings + warnings)
-    return replace(mesh, node_number=old.node_number, element_number=old.element_number, report=report)
+    return replace(mesh, node_number=node_number, element_number=old.element_number, report=report)
 
 
 def compare_quality(old: ShellMesh, new: ShellMesh) -> tuple[KeptQuality, tuple[str, ...]]:
