@@ -32,6 +32,7 @@ from skinmesh.commands.closing import print_closing, print_timings, printable
 from skinmesh.commands.keeping import print_kept
 from skinmesh.commands.stages import shown_stages
 from skinmesh.commands.starter import write_starter
+from skinmesh.commands.trial_command import trial
 from skinmesh.definition.schema import json_schema
 from skinmesh.definition.spanwise import constant
 from skinmesh.errors import OutputError, SkinmeshError
@@ -200,7 +201,7 @@ def schema() -> None:
     click.echo(json.dumps(json_schema(), indent=2, ensure_ascii=False))
 
 
-for _command in (beam, check):
+for _command in (beam, check, trial):
     cli.add_command(_command)
 
 

@@ -310,6 +310,8 @@ def _weight_step(mesh: ShellMesh) -> Iterator[str]:
         "**\n** The blade's weight, flapwise. Printed: mass (EMAS), reactions at the root, displacements of the tip.\n"
         "** Loads on clamped nodes are left out of the reactions.\n"
         f"*STEP\n*STATIC\n*DLOAD\nALL,GRAV,{GRAVITY},-1.,0.,0.\n"
+        "** CalculiX 2.20 prints wrong reactions where rotations of layered shells are held (displacements are right):\n"
+        "** for reactions, hold 1,3 alone.\n"
         f"*NODE PRINT,NSET={node_names['root']},TOTALS=ONLY\nRF\n"
         "*EL PRINT,ELSET=ALL,TOTALS=ONLY\nEMAS\n"
     )
