@@ -8,8 +8,9 @@ import numpy as np
 import pytest
 from blades import BOTH, FOAM, GLASS, blade, demonstration, foot, rule, skin_ply, stations, tube
 
-from skinmesh.definition.blade import AcrossCap, CapRule, FromAxis, Layout, NacaProfile, PlyRule, WebRule
+from skinmesh.definition.blade import AcrossCap, CapRule, ChordFraction, FromAxis, Layout, NacaProfile, PlyRule, WebRule
 from skinmesh.definition.spanwise import Spanwise, constant
+from skinmesh.errors import InputError
 from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
@@ -198,3 +199,62 @@ def test_the_sections_turning_sets_elements_round_the_nose():
     e3 = mesh.e3[ends][order]
     turn = np.degrees(np.arccos(np.clip(np.sum(e3[1:] * e3[:-1], axis=1), -1, 1)))
     assert turn.max() < 30.0
+
+
+def wing(layout: Layout, **more):
+    table = stations([0, 5, 10], [1.5, 1.2, 0.8], ["n", "n", "n"], pitch_axis=0.35)
+    return blade(table, {"n": NacaProfile("0021")}, layout=layout, **more)
+
+
+def test_overlapping_caps_are_an_error():
+    caps = tuple(
+        CapRule(name, ChordFraction(constant(c)), constant(0.3), BOTH) for name, c in (("a", 0.27), ("b", 0.3))
+    )
+    with pytest.raises(InputError, match="lies over the cap 'a'"):
+        build_mesh(wing(Layout(caps=caps)))
+
+
+def test_crossing_webs_are_an_error():
+    webs = (
+        WebRule("main", foot(ChordFraction(constant(0.4))), (1.0, 9.0)),
+        WebRule("cross", {1: ChordFraction(constant(0.2)), -1: ChordFraction(constant(0.6))}, (2.0, 8.0)),
+    )
+    with pytest.raises(InputError, match="crosses 'main'"):
+        build_mesh(wing(Layout(webs=webs)))
+
+
+def test_webs_that_lean_on_one_foot_are_none():
+    webs = (
+        WebRule("fore", {1: ChordFraction(constant(0.3)), -1: ChordFraction(constant(0.4))}, (1.0, 9.0)),
+        WebRule("aft", {1: ChordFraction(constant(0.5)), -1: ChordFraction(constant(0.4))}, (1.0, 9.0)),
+    )
+    mesh = build_mesh(wing(Layout(webs=webs), plies=()))
+    np.testing.assert_array_equal(mesh.node_sets["fore pressure foot"], mesh.node_sets["aft pressure foot"])
+
+
+def test_the_line_of_a_foot_never_moves_a_cap():
+    """A web outboard whose line, run on inboard, would cut through the cap."""
+    cap = CapRule("cap", ChordFraction(constant(0.3)), Spanwise([0, 10], [0.5, 0.15]), BOTH)
+    table = stations([0, 5, 10], [1.5, 1.2, 0.8], ["n", "n", "n"], pitch_axis=0.35)
+    web = WebRule("rear", foot(ChordFraction(constant(0.45))), (6.0, 9.0))
+    areas = []
+    for webs in ((), (web,)):
+        mesh = build_mesh(
+            blade(table, {"n": NacaProfile("0021")}, layout=Layout((cap,), webs), plies=(), mesh=rule(0.1))
+        )
+        own = mesh.region == [region.name for region in mesh.regions].index("suction cap")
+        areas.append(element_areas(mesh)[own].sum())
+    assert areas[1] == pytest.approx(areas[0], rel=1e-4)
+
+
+def test_layers_that_steps_leave_no_room_for_are_named():
+    plies = [skin_ply(), ply("cap", count=20, span=(0.5, 2.5), step=(0.1, 0.1))]
+    mesh = build_mesh(tube(plies=plies, mesh=rule(0.3)))
+    assert any("'cap': layers 11 to 20 would end before they begin" in text for text in mesh.report.warnings)
+
+
+def test_bare_elements_are_named_first():
+    definition = demonstration(mesh=rule(0.3, close_gap=0.012))
+    mesh = build_mesh(replace(definition, plies=definition.plies[1:2]))
+    assert mesh.report.warnings[0].startswith("bare elements: no ply covers")
+    np.testing.assert_array_equal(mesh.element_sets["bare elements"], np.flatnonzero(mesh.stack < 0))

@@ -13,6 +13,7 @@ from skinmesh.beam.schedule import LaidStrips, lay_strips, strip_spans, tipward
 from skinmesh.beam.sections import SectionProperties
 from skinmesh.beam.walls import Walls
 from skinmesh.definition.blade import BladeDefinition
+from skinmesh.definition.problems import FieldReport, Findings
 from skinmesh.skin.ruler import measure_sections
 from skinmesh.skin.seams import place_seams
 from skinmesh.skin.skinmap import SkinMap
@@ -141,14 +142,14 @@ def _place_seams(blade: BladeDefinition, skin: SkinMap, z: Floats) -> _Frames:
         blade.layout,
         measure_sections(surface, wanted),
         least_spacing=None if rule.least_spacing is None else rule.least_spacing(wanted),
-        file=blade.sources[0].file if blade.sources else blade.stem,
+        report=FieldReport(blade.stem, blade.lines or {}, Findings()),
         order=skin.seams.labels,
     )
     closing = np.interp(wanted, skin.levels.z, skin.closing)
+    pull = np.column_stack([np.interp(wanted, skin.levels.z, column) for column in skin.pull.T])
     place = surface.points(wanted[:, None], seams.t)
-    apart = 0.5 * closing[:, None] * (place[:, -1] - place[:, 0])
-    place[:, 0] += apart
-    place[:, -1] -= apart
+    place[:, 0] -= pull
+    place[:, -1] += pull
     at = [np.searchsorted(wanted, values) for values in (before, z, after)]
     slope = (place[at[2]] - place[at[0]]) / (after - before)[:, None, None]
     return _Frames(seams.t[at[1]], place[at[1]], slope, closing[at[1]])

@@ -22,7 +22,7 @@ from skinmesh.mesh.keep import (
 )
 from skinmesh.mesh.midsurface import move_to_middle
 from skinmesh.mesh.plane import cut_patches, mesh_patches
-from skinmesh.mesh.shellmesh import BuildReport, ShellMesh
+from skinmesh.mesh.shellmesh import NO_STACK, BuildReport, ShellMesh
 from skinmesh.skin.cover import cover_strips
 from skinmesh.skin.flatpattern import ply_areas, region_polygons
 from skinmesh.skin.unroll import unroll_skin
@@ -97,6 +97,8 @@ def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progres
         mesh = replace(mesh, report=replace(mesh.report, warnings=mesh.report.warnings + limited))
     tell("checks", 0.8)
     mesh = _with_thick_elements(mesh)
+    if blade.plies:
+        mesh = _with_bare_elements(mesh)
     if keep is not None:
         mesh = with_kept_numbers(mesh, keep)
     tell("done", 1.0)
@@ -119,6 +121,24 @@ def _with_thick_elements(mesh: ShellMesh) -> ShellMesh:
     return replace(mesh, element_sets={**mesh.element_sets, **sets}, report=report)
 
 
+def _with_bare_elements(mesh: ShellMesh) -> ShellMesh:
+    """Name the elements that no ply covers."""
+    bare = np.flatnonzero(mesh.stack == NO_STACK)
+    if len(bare) == 0:
+        return mesh
+    text = f"bare elements: no ply covers {len(bare)} elements ({_place(mesh, bare)}); the decks give them no section"
+    report = replace(mesh.report, warnings=(text, *mesh.report.warnings))
+    return replace(mesh, element_sets={**mesh.element_sets, "bare elements": bare}, report=report)
+
+
+def _place(mesh: ShellMesh, found: NDArray[np.int64]) -> str:
+    """Regions and span of some elements, and the first of their numbers."""
+    regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
+    z = mesh.points[mesh.cells[found, : mesh.n_sides], 2]
+    shown = ", ".join(str(number) for number in mesh.element_number[found][:8])
+    return f"{regions}, z = {z.min():.3f} to {z.max():.3f} m; elements {shown}{', …' if len(found) > 8 else ''}"
+
+
 def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
     rule = {
         "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of"
@@ -126,13 +146,7 @@ def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
         "thick laminate": "fills more than 0.8 of the radius of curvature",
         "narrow elements": "is thicker than their shortest edge is long; shell theory says little there",
     }[name]
-    regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
-    z = mesh.points[mesh.cells[found, : mesh.n_sides], 2]
-    shown = ", ".join(str(number) for number in mesh.element_number[found][:8])
-    return (
-        f"{name}: the laminate of {len(found)} element{'s' if len(found) > 1 else ''} {rule} ({regions}, z ="
-        f" {z.min():.3f} to {z.max():.3f} m; elements {shown}{', …' if len(found) > 8 else ''})"
-    )
+    return f"{name}: the laminate of {len(found)} element{'s' if len(found) > 1 else ''} {rule} ({_place(mesh, found)})"
 
 
 def _silent(stage: str, done: float) -> None:

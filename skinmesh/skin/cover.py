@@ -120,12 +120,24 @@ def _lay(ply: PlyRule, span: tuple[float, float], z: Floats) -> _Laid:
     at = np.unravel_index(int(np.argmax(move)), move.shape)
     place = f"ply '{ply.name}', layer {stretches[at[0]].layer}, {('root', 'tip')[at[1]]} end at z = {ends[at]:.3f} m"
     bands = _bands(ply.thickness, z)
-    lost = []
+    lost = _never_laid(ply, span, {stretch.layer for stretch in stretches})
     for stretch, (start, stop) in zip(stretches, rows, strict=True):
         if start == stop:
             lost.append(_lost_text(ply, stretch))
         out[stretch.layer - 1, start:stop] = bands[start:stop]
     return _Laid(out, float(move[at]), place, tuple(lost))
+
+
+def _never_laid(ply: PlyRule, span: tuple[float, float], laid: set[int]) -> list[str]:
+    """Name the layers that steps leave no room for."""
+    low, high = span if ply.span is None else (max(span[0], ply.span[0]), min(span[1], ply.span[1]))
+    z = np.union1d(np.clip(ply.count.z, low, high), [low, high])
+    wanted = set(range(1, int(np.floor(np.max(ply.count(z)) + 0.5)) + 1))
+    missing = sorted(wanted - laid)
+    if not missing:
+        return []
+    which = f"layers {missing[0]} to {missing[-1]}" if len(missing) > 1 else f"layer {missing[0]}"
+    return [f"ply '{ply.name}': {which} would end before they begin, with these steps and this span, and are left out"]
 
 
 def _lost_text(ply: PlyRule, stretch: LayerSpan) -> str:

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cmp_to_key, reduce
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,13 +22,16 @@ from skinmesh.definition.blade import (
     Layout,
     Place,
 )
-from skinmesh.errors import InputError, Problem
+from skinmesh.definition.problems import FieldReport
+from skinmesh.errors import InputError
 from skinmesh.skin.ruler import Ruler
+from skinmesh.skin.spread import spread_seams
 
 Floats = NDArray[np.float64]
 
 LEAST_SPACING = 0.01  # share of the side's arc length
 SAME_SEAM = 1e-6  # m
+CAP_OVERLAP = 0.1  # of the narrower cap: beyond it two caps want the same place, and no narrow tip explains that
 TOLD_MOVE = 1e-4  # moves of a seam below this share of the side's arc length are not worth a warning
 
 
@@ -76,7 +81,12 @@ class SeamTable:
 
 
 def place_seams(
-    layout: Layout, ruler: Ruler, *, least_spacing: Floats | None, file: str, order: tuple[str, ...] = ()
+    layout: Layout,
+    ruler: Ruler,
+    *,
+    least_spacing: Floats | None,
+    report: FieldReport,
+    order: tuple[str, ...] = (),
 ) -> tuple[SeamTable, tuple[str, ...]]:
     """Place every seam at the ruler's sections.
 
@@ -86,8 +96,8 @@ def place_seams(
     ruler : Ruler
     least_spacing : (m,) float array or None, m
         Least distance of two seams, None for one hundredth of the side's arc length.
-    file : str
-        Blade file, for messages.
+    report : FieldReport
+        Takes mistakes, with the lines of the blade file.
     order : tuple of str
         Labels of the seams as found at other sections of the same blade; without them the seams are put in the order
         of their mean places.
@@ -101,22 +111,24 @@ def place_seams(
     Raises
     ------
     InputError
-        A cap is wider than the skin, or the seams of a side do not fit on it at their least spacing.
+        A cap is wider than the skin or lies over another one, webs cross, or the seams of a side do not fit on it at
+        their least spacing.
     """
     warnings: list[str] = []
-    problems: list[Problem] = []
     tables = {}
     for side in (PRESSURE, SUCTION):
-        found = _collect(layout, ruler, side, problems, file)
+        found = _collect(layout, ruler, side, report)
         seams = _in_order(found, order, SIDE_NAMES[side]) if order else _order(found, ruler.z)
         spacing = LEAST_SPACING * ruler.length(side) if least_spacing is None else least_spacing
-        tables[side] = (seams, _spread(seams, ruler, side, spacing, warnings, problems, file))
-    if problems:
-        raise InputError(problems)
-    return _join(layout, ruler, tables), tuple(warnings)
+        tables[side] = (seams, _spread(seams, ruler, side, spacing, warnings, report))
+    table = _join(layout, ruler, tables)
+    _refuse_crossing_webs(layout, table, report)
+    if report.findings.problems:
+        raise InputError(report.findings.problems)
+    return table, tuple(warnings)
 
 
-def _collect(layout: Layout, ruler: Ruler, side: int, problems: list[Problem], file: str) -> list[SideSeam]:
+def _collect(layout: Layout, ruler: Ruler, side: int, report: FieldReport) -> list[SideSeam]:
     """Every seam of a side but its ends, in no order."""
     z, length = ruler.z, ruler.length(side)
     whole = (float(z[0]), float(z[-1]))
@@ -133,19 +145,16 @@ def _collect(layout: Layout, ruler: Ruler, side: int, problems: list[Problem], f
         too_wide = width >= length
         if too_wide.any():
             i = int(np.argmax(width - length))
-            problems.append(
-                Problem(
-                    file,
-                    0,
-                    f"layout.caps.{cap.name}.width",
-                    f"the cap is wider than the {SIDE_NAMES[side]} skin at z = {z[i]:.3f} m: {width[i]:.4f} m on"
-                    f" {length[i]:.4f} m of arc; make it narrower there",
-                )
+            report.add(
+                ("layout", "caps", cap.name, "width"),
+                f"the cap is wider than the {SIDE_NAMES[side]} skin at z = {z[i]:.3f} m: {width[i]:.4f} m on"
+                f" {length[i]:.4f} m of arc; make it narrower there",
             )
         centre = _arc_of_place(cap.centre, ruler, side, cap.plane_twist)
         edges[cap.name] = (centre - 0.5 * width, centre + 0.5 * width)
         seams.append(SideSeam((f"{cap.name} fore edge",), edges[cap.name][0], True, whole))
         seams.append(SideSeam((f"{cap.name} aft edge",), edges[cap.name][1], True, whole))
+    _refuse_overlapping_caps(edges, z, side, report)
     for web in layout.webs:
         foot = web.feet[side]
         if isinstance(foot, AcrossCap):
@@ -155,6 +164,35 @@ def _collect(layout: Layout, ruler: Ruler, side: int, problems: list[Problem], f
             arc = _held_beyond(_arc_of_place(foot, ruler, side, web.plane_twist), ruler, side, web.span)
         seams.append(SideSeam((f"{web.name} foot",), arc, False, web.span))
     return seams
+
+
+def _refuse_overlapping_caps(
+    edges: Mapping[str, tuple[Floats, Floats]], z: Floats, side: int, report: FieldReport
+) -> None:
+    for (first, a), (second, b) in combinations(edges.items(), 2):
+        overlap = np.minimum(a[1], b[1]) - np.maximum(a[0], b[0])
+        share = overlap / np.minimum(a[1] - a[0], b[1] - b[0])
+        i = int(np.argmax(share))
+        if share[i] > CAP_OVERLAP:
+            report.add(
+                ("layout", "caps", second),
+                f"lies over the cap '{first}' on the {SIDE_NAMES[side]} side: by {overlap[i]:.4f} m at z = {z[i]:.3f}"
+                " m; move their centres apart or make them narrower",
+            )
+
+
+def _refuse_crossing_webs(layout: Layout, table: SeamTable, report: FieldReport) -> None:
+    for first, second in combinations(layout.webs, 2):
+        if min(first.span[1], second.span[1]) <= max(first.span[0], second.span[0]):
+            continue
+        on_suction = table.feet[second.name, SUCTION] - table.feet[first.name, SUCTION]
+        on_pressure = table.feet[first.name, PRESSURE] - table.feet[second.name, PRESSURE]
+        if on_suction * on_pressure < 0:
+            report.add(
+                ("layout", "webs", second.name, "foot"),
+                f"the web crosses '{first.name}': before it on one side of the blade, behind it on the other; webs are"
+                " joined to skins alone",
+            )
 
 
 def _arc_of_place(place: Place, ruler: Ruler, side: int, plane_twist: float | None) -> Floats:
@@ -224,8 +262,7 @@ def _spread(
     side: int,
     spacing: Floats,
     warnings: list[str],
-    problems: list[Problem],
-    file: str,
+    report: FieldReport,
 ) -> Floats:
     """(m, k + 2) arc lengths with the leading and the trailing edge at the ends, at least the spacing apart."""
     length = ruler.length(side)
@@ -233,21 +270,15 @@ def _spread(
     room = length - spacing * (len(seams) + 1)
     if np.any(room < 0.0):
         i = int(np.argmin(room))
-        problems.append(
-            Problem(
-                file,
-                0,
-                "layout",
-                f"{len(seams)} seams do not fit on the {SIDE_NAMES[side]} side at z = {ruler.z[i]:.3f} m: its"
-                f" {length[i]:.4f} m of arc leave less than the least spacing of {spacing[i]:.4f} m; take fewer regions"
-                " or a smaller mesh.least_spacing",
-            )
+        report.add(
+            ("layout",),
+            f"{len(seams)} seams do not fit on the {SIDE_NAMES[side]} side at z = {ruler.z[i]:.3f} m: its"
+            f" {length[i]:.4f} m of arc leave less than the least spacing of {spacing[i]:.4f} m; take fewer regions"
+            " or a smaller mesh.least_spacing",
         )
         return wanted
-    # both passes keep the spacing; so does their mean, and it favours neither edge
-    rising = _push_down(_push_up(wanted, spacing), spacing)
-    falling = _push_up(_push_down(wanted, spacing), spacing)
-    kept = 0.5 * (rising + falling)
+    is_edge = np.array([True, *(seam.is_edge for seam in seams), True])
+    kept = spread_seams(wanted, is_edge, spacing)
     for k, seam in enumerate(seams):
         active = (ruler.z >= seam.span[0] - 1e-9) & (ruler.z <= seam.span[1] + 1e-9)
         move = np.where(active, kept[:, k + 1] - wanted[:, k + 1], 0.0)
@@ -257,21 +288,10 @@ def _spread(
             warnings.append(
                 f"{SIDE_NAMES[side]} {' + '.join(seam.labels)}: moved by up to {abs(move[i]):.4f} m (at z ="
                 f" {ruler.z[i]:.3f} m, between z = {ruler.z[told].min():.3f} and {ruler.z[told].max():.3f} m) to keep"
-                f" {spacing[i]:.4f} m from its neighbours"
+                f" {spacing[i]:.4f} m from its neighbours; give it a place of its own there, or a smaller"
+                " mesh.least_spacing"
             )
     return np.asarray(kept)
-
-
-def _push_up(arc: Floats, spacing: Floats) -> Floats:
-    steps = spacing[:, None] * np.arange(arc.shape[1])
-    out = np.maximum.accumulate(arc - steps, axis=1) + steps
-    return np.asarray(np.minimum(out, arc[:, -1:] - (steps[:, -1:] - steps)))
-
-
-def _push_down(arc: Floats, spacing: Floats) -> Floats:
-    steps = spacing[:, None] * np.arange(arc.shape[1])
-    out = np.minimum.accumulate((arc - steps)[:, ::-1], axis=1)[:, ::-1] + steps
-    return np.asarray(np.maximum(out, arc[:, :1] + steps))
 
 
 def _join(layout: Layout, ruler: Ruler, tables: dict[int, tuple[list[SideSeam], Floats]]) -> SeamTable:

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.definition.blade import PRESSURE, SIDE_NAMES, SUCTION, BladeDefinition
+from skinmesh.definition.problems import FieldReport, Findings
 from skinmesh.errors import InputError, Problem
 from skinmesh.skin.divisions import divide_gaps, divide_rows, least_across
 from skinmesh.skin.kept import KeptLayout, LayoutComparison
@@ -50,10 +51,11 @@ def unroll_skin(
         The layout does not fit on the skin, the mesh would be far too large, or the layout is not the kept one.
     """
     rule, file = blade.mesh, blade.sources[0].file if blade.sources else blade.stem
+    report = FieldReport(file, blade.lines or {}, Findings())
     rows, spans, warnings = _find_rows(blade, surface)
     samples = np.union1d(rows.z, np.linspace(surface.z_ends[0], surface.z_ends[1], N_SPAN_SAMPLES))
     ruler = measure_sections(surface, samples)
-    coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), file=file)
+    coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), report=report)
     if kept is not None:
         _refuse_other_layout(blade, kept, rows, coarse, file)
     gaps = divide_gaps(ruler, coarse, rule)
@@ -67,14 +69,13 @@ def unroll_skin(
     levels = divide_rows(rows, forced, ruler, coarse, gaps.n, rule, counts=counts)
     n_elements = int(levels.n.sum()) * int(gaps.n.sum())
     if n_elements > MOST_ELEMENTS:
-        raise InputError(
-            [Problem(file, 0, "mesh.size", f"would make {n_elements / 1e6:.1f} million elements; take a larger size")]
-        )
+        report.add(("mesh", "size"), f"would make {n_elements / 1e6:.1f} million elements; take a larger size")
+        raise InputError(report.findings.problems)
     seams, seam_warnings = place_seams(
         blade.layout,
         measure_sections(surface, levels.z),
         least_spacing=_spacing(blade, levels.z),
-        file=file,
+        report=report,
         order=coarse.labels,
     )
     webs = _webs(blade, surface, rows, levels.z, seams)
