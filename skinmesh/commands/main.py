@@ -57,6 +57,8 @@ def _length(_ctx: click.Context, _parameter: click.Parameter, value: float | Non
 def _format_names(_ctx: click.Context, _parameter: click.Parameter, value: str) -> tuple[str, ...]:
     """Split a list of format names with commas between."""
     names = tuple(dict.fromkeys(name.strip().lower() for name in value.split(",") if name.strip()))
+    if not names:
+        raise click.BadParameter(f"names no format; known: {', '.join(FORMATS)}.")
     for name in names:
         if name not in FORMATS:
             near = get_close_matches(name, FORMATS, n=1)
@@ -146,7 +148,7 @@ def build(
     """Build the layered shell mesh of BLADE.yaml and write it.
 
     All files are written, or none: a build that fails leaves DIR as it was. Files of an earlier build in DIR are
-    replaced; other files there stay.
+    replaced, or removed where they are not asked for now; other files there stay.
 
     \b
     Examples:

@@ -26,6 +26,7 @@ from skinmesh.mesh.shellmesh import NO_STACK, BuildReport, ShellMesh
 from skinmesh.skin.cover import cover_strips
 from skinmesh.skin.flatpattern import ply_areas, region_polygons
 from skinmesh.skin.unroll import unroll_skin
+from skinmesh.surface.doubts import doubtful_profiles, doubtful_stations
 from skinmesh.surface.loft import loft_surface
 
 Progress = Callable[[str, float], None]
@@ -73,7 +74,12 @@ def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progres
     if keep is not None:
         stacks = keep_stack_numbers(stacks, keep)
     report = BuildReport(
-        warnings=(*warnings, *stacks.warnings),
+        warnings=(
+            *doubtful_stations(blade.stations),
+            *doubtful_profiles(blade.profiles),
+            *warnings,
+            *stacks.warnings,
+        ),
         ply_end_move=stacks.largest_move,
         ply_end_place=stacks.move_place,
         rows=tuple(zip(skin.rows.labels, skin.rows.z.tolist(), strict=True)),

@@ -16,6 +16,7 @@ Floats = NDArray[np.float64]
 
 N_INTERVALS = 160
 N_NEWTON = 4
+TURNING_STRETCH = 0.01  # of a side's arc length
 
 
 @dataclass(frozen=True, eq=False)
@@ -85,12 +86,20 @@ class Ruler:
         return _inverse(self.tau, values, rates, wanted=distance, interval=j)
 
     def turning_density(self, side: int) -> Floats:
-        """(m, n) curvature |dφ/ds| at the samples, 1/m, smoothed over neighbouring samples."""
+        """(m, n) net turning of the section per arc length about each sample, 1/m.
+
+        It is taken over a stretch of TURNING_STRETCH of the side, so that points of a profile that were rounded, and
+        wander by a hair, do not count as curvature.
+        """
         rate = self.place_rate[_index(side)]
-        step = np.abs(np.angle(rate[:, 1:] / rate[:, :-1]))
-        density = step / np.maximum(np.diff(self.arc[_index(side)], axis=1), 1e-12)
-        padded = np.concatenate([density[:, :1], density, density[:, -1:]], axis=1)
-        return np.asarray(0.5 * (padded[:, 1:] + padded[:, :-1]))
+        steps = np.angle(rate[:, 1:] / rate[:, :-1])
+        direction = np.concatenate([np.zeros((len(rate), 1)), np.cumsum(steps, axis=1)], axis=1)
+        low, high = (np.clip(self.tau + half * TURNING_STRETCH, 0.0, 1.0) for half in (-0.5, 0.5))
+        arc = self.arc[_index(side)]
+        turned, passed = (
+            _at_grid(self.tau, values, high) - _at_grid(self.tau, values, low) for values in (direction, arc)
+        )
+        return np.asarray(np.abs(turned) / np.maximum(passed, 1e-12))
 
 
 def measure_sections(surface: Surface, z: Floats) -> Ruler:
@@ -121,6 +130,13 @@ def measure_sections(surface: Surface, z: Floats) -> Ruler:
 
 def _index(side: int) -> int:
     return 1 if side == SUCTION else 0
+
+
+def _at_grid(grid: Floats, values: Floats, x: Floats) -> Floats:
+    """Interpolate every row of values at the same places."""
+    j = np.clip(np.searchsorted(grid, x, side="right") - 1, 0, len(grid) - 2)
+    u = (x - grid[j]) / (grid[j + 1] - grid[j])
+    return np.asarray(values[:, j] * (1.0 - u) + values[:, j + 1] * u)
 
 
 def _hermite(grid: Floats, values: Floats, rates: Floats, x: Floats) -> Floats:

@@ -208,7 +208,7 @@ def _heading(mesh: ShellMesh, layers: list[tuple[Layer, ...]]) -> Iterator[str]:
         notes.append(
             f"{n_bare} elements carry no ply: they have no section, and the deck has no step. Set WITHOUT_PLIES."
         )
-    yield f"*HEADING\n{ascii_text(mesh.title)[:70]}\n"
+    yield f"*HEADING\nBlade: {ascii_text(mesh.title)[:63]}\n"  # a title may begin with a star
     yield "".join(f"** {note}\n" for note in notes)
 
 
@@ -310,8 +310,8 @@ def _weight_step(mesh: ShellMesh) -> Iterator[str]:
         "**\n** The blade's weight, flapwise. Printed: mass (EMAS), reactions at the root, displacements of the tip.\n"
         "** Loads on clamped nodes are left out of the reactions.\n"
         f"*STEP\n*STATIC\n*DLOAD\nALL,GRAV,{GRAVITY},-1.,0.,0.\n"
-        "** CalculiX 2.20 prints wrong reactions where rotations of layered shells are held (displacements are right):\n"
-        "** for reactions, hold 1,3 alone.\n"
+        "** CalculiX 2.20 prints wrong reactions where rotations of layered shells are held (displacements are\n"
+        "** right): for reactions, hold 1,3 alone.\n"
         f"*NODE PRINT,NSET={node_names['root']},TOTALS=ONLY\nRF\n"
         "*EL PRINT,ELSET=ALL,TOTALS=ONLY\nEMAS\n"
     )
