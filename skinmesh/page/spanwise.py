@@ -21,7 +21,8 @@ def shape_along(mesh: ShellMesh) -> dict[str, Any]:
     """Leading and trailing edge, chord, twist and thickness of every node ring that has both edges.
 
     The chord runs from the node on the leading edge to the middle of the trailing edge's nodes; the thickness is the
-    section's extent across it.
+    section's extent across it. A profile that keeps its own axes may have its foremost node some tenths of a degree off
+    them, and so does the twist from that of the table.
 
     Parameters
     ----------

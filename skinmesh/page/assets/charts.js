@@ -66,7 +66,7 @@ function showCharts() {
     chart("Axial stiffness EA", "N", beam.z, [{ values: beam.EA }], { logarithmic: true }),
   ].filter(Boolean);
   byId("charts").replaceChildren(...nodes);
-  byId("span-note").textContent = "Shape measured on the mesh: chord from the leading edge node to the middle of the trailing edge, thickness across it." +
+  byId("span-note").textContent = "Shape measured on the mesh: chord from the leading edge node to the middle of the trailing edge, thickness across it; where a profile keeps its own axes, the twist differs from the table's by some tenths of a degree." +
     (beam.z.length ? ` Mass and stiffness by thin-wall theory on the mesh's own elements, at ${beam.z.length} of ${beam.rows} element rows. The orange line is the cut.` : "");
   const rows = words.stations.map((z, k) => {
     const s = nearest(shape, z), b = nearest(beam, z);

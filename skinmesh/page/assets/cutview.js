@@ -87,7 +87,7 @@ function makeCut(mesh, pick) {
       const middle = inside.sort((a, b) => a.ends[0].y + a.ends[0].x - b.ends[0].y - b.ends[0].x)[inside.length >> 1];
       const isWeb = words.regions[region].kind === "web";
       const [dy, dx] = isWeb ? [-1, 0] : middle.normal;
-      const away = 12 * pixel + (isWeb ? 0.5 * state.factor * thicknessOf(middle.stack) : 0);
+      const away = 12 * pixel + state.factor * (0.5 - mesh.offset[middle.element]) * thicknessOf(middle.stack);
       const y = (middle.ends[0].y + middle.ends[1].y) / 2 + dy * away, x = (middle.ends[0].x + middle.ends[1].x) / 2 + dx * away;
       const anchor = Math.abs(dy) > 0.3 ? (dy < 0 ? "end" : "start") : "middle";
       const name = words.regions[region].part;

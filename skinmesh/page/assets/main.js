@@ -104,6 +104,7 @@ async function start() {
     viewer.set({ by: "region", ply: 0, shape: "blade" });
     viewer.theme();
     viewer.draw();
+    viewer.settle();
     new ResizeObserver(() => viewer.resize()).observe(byId("stage"));
     matchMedia("(prefers-color-scheme: dark)").addEventListener("change", viewer.theme);
   }

@@ -480,10 +480,18 @@ function makeViewer(mesh) {
       showArrows();
       render();
     },
+    // Wait until the picture is there, to the last pixel.
+    settle() {
+      const gl = renderer.getContext();
+      gl.readPixels(0, 0, 1, 1, gl.RGBA, gl.UNSIGNED_BYTE, new Uint8Array(4));
+    },
     goTo(e) {
       const at = new THREE.Vector3(centres[3 * e], centres[3 * e + 1], centres[3 * e + 2]);
-      const { side, kind } = words.regions[mesh.region[e]];
-      if (state.shape !== "flat") look(kind === "web" ? "leading" : kind === "base" ? "trailing" : side < 0 ? "pressure" : "suction");
+      const { kind } = words.regions[mesh.region[e]];
+      const { e3 } = axesOf(e);
+      const facing = (name) => DIRECTIONS[name].reduce((sum, x, d) => sum + x * e3[d], 0);
+      const views = ["suction", "pressure", "leading", "trailing"];
+      if (state.shape !== "flat") look(views.reduce((best, name) => (facing(name) > facing(best) ? name : best)));
       camera.position.add(at).sub(controls.target);
       controls.target.copy(at);
       if (kind === "web" && state.shape !== "flat") {
@@ -503,12 +511,14 @@ function makeViewer(mesh) {
       controls._rotateLeft?.(dx);
       controls._rotateUp?.(dy);
       controls.update();
+      showArrows();
     },
     move(dx, dy) {
       const shift = new THREE.Vector3(dx / camera.zoom, dy / camera.zoom, 0).applyQuaternion(camera.quaternion);
       camera.position.add(shift);
       controls.target.add(shift);
       controls.update();
+      showArrows();
       render();
     },
   };
