@@ -72,8 +72,8 @@ def doubtful_profiles(profiles: Mapping[str, Profile]) -> tuple[str, ...]:
             if wander > WANDER:
                 told.append(
                     f"profile '{name}' ({profile.file}): its points wander by some {wander:.1e} of the chord,"
-                    " as rounded ones do; the surface goes through every point, so it is wavy there. Give more digits, fewer"
-                    " points, or a smoothed file"
+                    " as rounded ones do; the surface goes through every point, so it is wavy there. Give more digits,"
+                    " fewer points, or a smoothed file"
                 )
     return tuple(told)
 
