@@ -62,7 +62,8 @@ function showTrial() {
   ];
   byId("trial").replaceChildren(make("h3", {}, `Trial run in ${trial.solver.name} ${trial.solver.version ?? ""}`),
     table(["case", "solver", "theory", "difference"], rows, { numeric: [1, 2, 3] }),
-    trial.failures.length ? make("p", { class: "fail" }, trial.failures.join("; ")) : make("p", { class: "quiet" }, "Within its limits."));
+    make("p", trial.failures.length ? { class: "fail" } : {}, trial.failures.length ? `Failed: ${trial.failures.join("; ")}` : "The trial reported no failure."),
+    trial.remarks.length ? make("ul", { class: "quiet" }, ...trial.remarks.map((remark) => make("li", {}, remark))) : "");
 }
 
 function showLines() {

@@ -199,28 +199,29 @@ function makeViewer(mesh) {
         const reach = words.seams.length ? [words.seams[0], words.seams.at(-1)].map(({ line: p }) => arcAt(p, z)) : [0, 0];
         ends.push(0, across * reach[0], z, 0, across * reach[1], z);
       }
-      // Webs have no seams on the skin: their outline is that of their elements' borders.
-      for (const [k, { low, high, bottom, top }] of Object.entries(webFrames())) {
+      // Webs have no seams on the skin: both feet and both ends are drawn.
+      for (const [k, tops] of Object.entries(webTops())) {
         const y = (arc) => across * (webStart[k] + arc);
-        ends.push(0, y(bottom), low, 0, y(top), low, 0, y(bottom), high, 0, y(top), high);
+        const [first, last] = [tops[0], tops.at(-1)];
+        ends.push(0, y(0), first[0], 0, y(0), last[0]);
+        for (const [z, top] of [first, last]) ends.push(0, y(0), z, 0, y(top), z);
+        for (let i = 1; i < tops.length; i++) ends.push(0, y(tops[i - 1][1]), tops[i - 1][0], 0, y(tops[i][1]), tops[i][0]);
       }
       seamLines.geometry.setAttribute("position", new THREE.BufferAttribute(new Float32Array(ends), 3));
     }
   }
 
-  // Ends of every web: z, and the height there.
-  function webFrames() {
-    const frames = {};
+  // Height of every web at each z where it has nodes, root first.
+  function webTops() {
+    const found = {};
     for (let i = 0; i < n; i++) {
       const k = mesh.region[Math.floor(i / sides)];
       if (!(k in webStart)) continue;
+      const tops = (found[k] ??= new Map());
       const z = place[3 * i + 2];
-      const found = (frames[k] ??= { low: z, high: z, bottom: 0, top: 0 });
-      found.low = Math.min(found.low, z);
-      found.high = Math.max(found.high, z);
-      found.top = Math.max(found.top, mesh.arc[i]);
+      tops.set(z, Math.max(tops.get(z) ?? 0, mesh.arc[i]));
     }
-    return frames;
+    return Object.fromEntries(Object.entries(found).map(([k, tops]) => [k, [...tops].sort((a, b) => a[0] - b[0])]));
   }
 
   // Names beside the developed skin's own parts.
@@ -230,11 +231,12 @@ function makeViewer(mesh) {
       return;
     }
     const [least, most] = words.skin_arc;
-    const spots = [["pressure side", 0.9 * least], ["leading edge", 0], ["suction side", 0.9 * most],
-      ...Object.entries(webStart).map(([k, start]) => [regionName(+k), start - 0.3 * gap])];
+    const aft = box.high[2] - 0.16 * (box.high[2] - box.low[2]);
+    const spots = [["pressure side", 0.9 * least, aft], ["leading edge", 0, aft], ["suction side", 0.9 * most, aft],
+      ...Object.entries(webStart).map(([k, start]) => [regionName(+k), start - 0.3 * gap, box.low[2]])];
     const at = new THREE.Vector3();
-    byId("tags").replaceChildren(...spots.map(([name, y]) => {
-      at.set(0, across * y, box.high[2] - 0.16 * (box.high[2] - box.low[2])).project(camera);
+    byId("tags").replaceChildren(...spots.map(([name, y, z]) => {
+      at.set(0, across * y, z).project(camera);
       const tag = make("span", { class: "tag" }, name);
       tag.style.left = `${Math.max((0.5 + 0.5 * at.x) * canvas.clientWidth, 4)}px`;
       tag.style.top = `${(0.5 - 0.5 * at.y) * canvas.clientHeight}px`;
@@ -276,6 +278,7 @@ function makeViewer(mesh) {
       if (Math.abs(point.x * camera.zoom) > width || Math.abs(point.y * camera.zoom) > height) continue;
       taken.set(key, e);
     }
+    arrowLines.fibre.material.color.set(state.by === "region" ? "#000000" : "#d6006e");
     for (const kind of kinds) {
       const ends = [];
       for (const e of taken.values()) addArrow(ends, e, kind, 0.75 * cell);
@@ -285,7 +288,7 @@ function makeViewer(mesh) {
       lines.geometry.setAttribute("position", new THREE.BufferAttribute(new Float32Array(ends), 3));
     }
     byId("thinned").textContent = `Arrows on ${grouped(taken.size)} of ${grouped(visible.length)} elements; zoom in for more. ` +
-      "e1 is orange, e3 is the ink's colour, fibres are magenta.";
+      "e1 is orange, e3 is the ink's colour, fibres are thick lines.";
   }
 
   const angleOf = (e) => {
@@ -335,7 +338,12 @@ function makeViewer(mesh) {
     const start = kind === "fibre" ? at.map((x, d) => x - 0.5 * length * way[d]) : at;
     const tip = start.map((x, d) => x + length * way[d]);
     ends.push(...start, ...tip);
-    if (kind === "fibre") return;
+    if (kind === "fibre") {
+      // Lines are a pixel wide: two more beside it make it stand out.
+      const beside = state.shape === "flat" ? [0, -way[2], way[1]] : [0, 1, 2].map((d) => e3[(d + 1) % 3] * way[(d + 2) % 3] - e3[(d + 2) % 3] * way[(d + 1) % 3]);
+      for (const s of [-0.8, 0.8]) for (const end of [start, tip]) ends.push(...end.map((x, d) => x + (s / camera.zoom) * beside[d]));
+      return;
+    }
     for (const s of [-1, 1]) ends.push(...tip, ...tip.map((x, d) => x - 0.28 * length * way[d] + s * 0.14 * length * cross[d]));
   }
 
