@@ -79,7 +79,7 @@ function makeCut(mesh, pick) {
   // The name of each region that is long enough on the screen, on the outside of its middle wall.
   function labels(walls, pixel) {
     const byRegion = Map.groupBy ? Map.groupBy(walls, (wall) => wall.region) : groupBy(walls, (wall) => wall.region);
-    const found = [];
+    const found = [], taken = [];
     for (const [region, list] of byRegion) {
       const inside = list.filter((wall) => wall.ends.every((end) =>
         end.y > state.box[0] && end.y < state.box[0] + state.box[2] && -end.x > state.box[1] && -end.x < state.box[1] + state.box[3]));
@@ -94,6 +94,9 @@ function makeCut(mesh, pick) {
       // Kept inside the frame, by a guess at its width.
       const long = 6.6 * pixel * name.length, back = { start: 0, middle: 0.5, end: 1 }[anchor] * long;
       const from = Math.min(Math.max(y - back, state.box[0] + 4 * pixel), state.box[0] + state.box[2] - long - 4 * pixel);
+      const spot = [from, -x - 8 * pixel, from + long, -x + 8 * pixel];
+      if (taken.some((one) => one[0] < spot[2] && spot[0] < one[2] && one[1] < spot[3] && spot[1] < one[3])) continue;
+      taken.push(spot);
       found.push(makeSvg("text", { x: from, y: -x + 4 * pixel, "font-size": 11.5 * pixel }, name));
     }
     return found;

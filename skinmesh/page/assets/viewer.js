@@ -238,7 +238,7 @@ function makeViewer(mesh) {
     byId("tags").replaceChildren(...spots.map(([name, y, z]) => {
       at.set(0, across * y, z).project(camera);
       const tag = make("span", { class: "tag" }, name);
-      tag.style.left = `${Math.max((0.5 + 0.5 * at.x) * canvas.clientWidth, 4)}px`;
+      tag.style.left = `${Math.max(Math.min((0.5 + 0.5 * at.x) * canvas.clientWidth, canvas.clientWidth - 7 * name.length), 4)}px`;
       tag.style.top = `${(0.5 - 0.5 * at.y) * canvas.clientHeight}px`;
       return tag;
     }));
@@ -439,7 +439,7 @@ function makeViewer(mesh) {
 
   function resize() {
     const width = stage.clientWidth, height = stage.clientHeight;
-    if (!width || !height) return;
+    if (!width || !height || (width === camera.right - camera.left && height === camera.top - camera.bottom)) return;
     renderer.setSize(width, height, false);
     [camera.left, camera.right, camera.top, camera.bottom] = [-width / 2, width / 2, height / 2, -height / 2];
     camera.updateProjectionMatrix();
@@ -488,11 +488,8 @@ function makeViewer(mesh) {
       showArrows();
       render();
     },
-    // Wait until the picture is there, to the last pixel.
-    settle() {
-      const gl = renderer.getContext();
-      gl.readPixels(0, 0, 1, 1, gl.RGBA, gl.UNSIGNED_BYTE, new Uint8Array(4));
-    },
+    // Wait until the picture is there.
+    settle: () => renderer.getContext().finish(),
     goTo(e) {
       const at = new THREE.Vector3(centres[3 * e], centres[3 * e + 1], centres[3 * e + 2]);
       const { kind } = words.regions[mesh.region[e]];
