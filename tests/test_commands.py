@@ -108,11 +108,11 @@ def contents(directory: Path) -> dict[str, bytes]:
 def test_help_shows_every_command_and_the_exit_statuses(run) -> None:
     outcome = run("--help")
     assert outcome.status == 0
-    for word in ("new", "build", "beam", "check", "schema", "Exit status: 0 done", "skinmesh new my-blade"):
+    for word in ("new", "build", "beam", "check", "trial", "schema", "Exit status: 0 done", "skinmesh new my-blade"):
         assert word in outcome.out
 
 
-@pytest.mark.parametrize("command", ["new", "build", "beam", "check", "schema"])
+@pytest.mark.parametrize("command", ["new", "build", "beam", "check", "trial", "schema"])
 def test_help_of_a_command_has_an_example_and_fits_80_columns(run, command: str) -> None:
     outcome = run(command, "--help")
     assert outcome.status == 0
