@@ -16,7 +16,7 @@ from skinmesh.page.packing import Packed
 _ASSETS = Path(__file__).parent / "assets"
 LIBRARY = "three.bundle.min.js"
 LICENCE = "three.LICENSE.txt"
-SCRIPTS = ("data.js", "viewer.js", "picked.js", "cut.js", "cutview.js", "charts.js", "tables.js", "main.js")
+SCRIPTS = ("data.js", "paint.js", "viewer.js", "picked.js", "cut.js", "cutview.js", "charts.js", "tables.js", "main.js")
 _PLACE = re.compile(r"\{\{(\w+)\}\}")
 
 
