@@ -5,7 +5,9 @@ set -euo pipefail
 cd "$(dirname "${BASH_SOURCE[0]}")/.."
 source examples/prepare.sh
 
-need_packages "${SYSTEM_PACKAGES[@]}" calculix-ccx
+browser=()
+if grep -qs '^ID=debian' /etc/os-release; then browser=(chromium chromium-driver); fi  # elsewhere the page's tests skip
+need_packages "${SYSTEM_PACKAGES[@]}" calculix-ccx "${browser[@]}"
 make_environment .venv-test
 pip_install .venv-test -e '.[test]'
 bin=$PWD/.venv-test/bin

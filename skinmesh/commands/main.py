@@ -30,6 +30,7 @@ from skinmesh.commands.beam_command import beam
 from skinmesh.commands.check_command import check
 from skinmesh.commands.closing import print_closing, print_timings, printable
 from skinmesh.commands.keeping import print_kept
+from skinmesh.commands.page_command import page
 from skinmesh.commands.stages import shown_stages
 from skinmesh.commands.starter import write_starter
 from skinmesh.commands.trial_command import trial
@@ -203,7 +204,7 @@ def schema() -> None:
     click.echo(json.dumps(json_schema(), indent=2, ensure_ascii=False))
 
 
-for _command in (beam, check, trial):
+for _command in (beam, check, trial, page):
     cli.add_command(_command)
 
 

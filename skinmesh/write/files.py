@@ -21,7 +21,8 @@ for _module in pkgutil.iter_modules([str(Path(__file__).parent / "formats")]):
 
 DEFAULT_FORMATS = ("vtu", "msh", "inp", "bdf")
 CHECKS_FILE, CHECK_SETS_FILE = "checks.json", "checks.inp"
-"""What a check of the mesh writes beside it; of an earlier mesh they are removed, for they would speak of another."""
+STALE_FILES = (CHECKS_FILE, CHECK_SETS_FILE, "trial.json", "trial.log", "trial.png", "page.html")
+"""What check, trial and page write beside a mesh; of an earlier mesh they are removed, for they speak of another."""
 
 
 @dataclass(frozen=True)
@@ -83,7 +84,7 @@ def write(
     wanted = _known_formats(formats)
     directory = Path(directory)
     extras = extras or {}
-    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, CHECKS_FILE, CHECK_SETS_FILE, *extras)}
+    own = {f"{mesh.stem}.{ending}" for ending in (*FORMATS, *TABLES, *STALE_FILES, *extras)}
     try:
         with new_files(directory, is_own=own.__contains__) as stage:
             writers = {name: FORMATS[name].write for name in wanted}
