@@ -28,9 +28,9 @@ from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
 from skinmesh.check.totals import check_files, check_inputs, check_mass
 from skinmesh.check.webs import check_web_ends
-from skinmesh.errors import OutputError
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
+from skinmesh.write.placing import new_file
 
 Progress = Callable[[str, float], None]
 
@@ -232,14 +232,8 @@ def write_checks(report: CheckReport) -> tuple[Path, Path]:
     """
     paths = report.built.file(CHECKS_FILE), report.built.file(CHECK_SETS_FILE)
     for path, text in zip(paths, (checks_json(report), sets_text(report)), strict=True):
-        unfinished = path.with_name(f".{path.name}.unfinished")
-        try:
+        with new_file(path) as unfinished:
             unfinished.write_text(text, encoding="utf-8", newline="\n")
-            unfinished.replace(path)
-        except OSError as error:
-            raise OutputError(f"cannot write {path}: {error.strerror or error}") from error
-        finally:
-            unfinished.unlink(missing_ok=True)
     return paths
 
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from pathlib import Path
-from secrets import token_hex
 
 import click
 import numpy as np
@@ -19,6 +18,7 @@ from skinmesh.commands.stages import shown_stages
 from skinmesh.errors import OutputError
 from skinmesh.show.beam_plot import beam_plot
 from skinmesh.show.page import Page
+from skinmesh.write.placing import new_file
 
 SHOWN_ROWS = 14
 
@@ -75,25 +75,13 @@ def beam(blade_file: Path, output: Path | None, places: str, picture: bool) -> N
 
 
 def _write(path: Path, text: str) -> None:
-    unfinished = path.with_name(f".{path.name}.{token_hex(4)}")
-    try:
+    with new_file(path) as unfinished:
         unfinished.write_text(text, encoding="utf-8")
-        unfinished.replace(path)
-    except OSError as error:
-        raise OutputError(f"cannot write {path}: {error.strerror or error}") from error
-    finally:
-        unfinished.unlink(missing_ok=True)
 
 
 def _draw(path: Path, table: BeamTable) -> None:
-    unfinished = path.with_name(f".{token_hex(4)}.{path.name}")
-    try:
+    with new_file(path) as unfinished:
         beam_plot(table, unfinished)
-        unfinished.replace(path)
-    except OSError as error:
-        raise OutputError(f"cannot write {path}: {error.strerror or error}") from error
-    finally:
-        unfinished.unlink(missing_ok=True)
 
 
 def _shown(table: BeamTable) -> tuple[RenderableType, ...]:

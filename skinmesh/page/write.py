@@ -4,17 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from pathlib import Path
-from secrets import token_hex
 
 from skinmesh.check.finding import Finding
 from skinmesh.check.reading import read_built_mesh
 from skinmesh.check.run import check_directory
-from skinmesh.errors import InputError, OutputError, Problem
+from skinmesh.errors import InputError, Problem
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.page.document import page_html
 from skinmesh.page.gather import finding_words, fresh_checks, gather_arrays, gather_words, read_trial
 from skinmesh.page.packing import pack_arrays
 from skinmesh.write.files import CHECKS_FILE
+from skinmesh.write.placing import new_file
 
 Progress = Callable[[str, float], None]
 
@@ -63,14 +63,8 @@ def write_page(directory: Path, *, progress: Progress | None = None) -> Path:
     tell("page", 0.8)
     html = page_html(words, pack_arrays(gather_arrays(built.mesh)))
     path = built.file(PAGE_FILE)
-    unfinished = path.with_name(f".{path.name}.{token_hex(4)}")
-    try:
+    with new_file(path) as unfinished:
         unfinished.write_text(html, encoding="utf-8", newline="\n")
-        unfinished.replace(path)
-    except OSError as error:
-        raise OutputError(f"cannot write {path}: {error.strerror or error}") from error
-    finally:
-        unfinished.unlink(missing_ok=True)
     return path
 
 

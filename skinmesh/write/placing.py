@@ -37,6 +37,34 @@ _NAMES = ".names"
 
 
 @contextmanager
+def new_file(path: Path) -> Iterator[Path]:
+    """Give a place beside a file for its new content, and move that there when all of it is written.
+
+    Parameters
+    ----------
+    path : Path
+
+    Yields
+    ------
+    Path
+        Of the same suffix, in the same directory; gone afterwards, whatever happens.
+
+    Raises
+    ------
+    OutputError
+        The file cannot be written; what was there before is there still.
+    """
+    unfinished = path.with_name(f".{token_hex(4)}.{path.name}")
+    try:
+        yield unfinished
+        unfinished.replace(path)
+    except OSError as error:
+        raise OutputError(f"cannot write {path}: {error.strerror or error}") from error
+    finally:
+        unfinished.unlink(missing_ok=True)
+
+
+@contextmanager
 def new_files(directory: Path, *, is_own: Callable[[str], bool]) -> Iterator[Path]:
     """Give an empty directory to write files into; when all went well they take the place of the old ones.
 
