@@ -88,6 +88,7 @@ def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progres
         developed_areas={name: float(polygon.area) for name, polygon in region_polygons(skin).items()},
         ply_areas=ply_areas(blade, skin, covered),
         mesh_rule=blade.mesh,
+        table=blade.stations,
     )
     tell("mesh", 0.3)
     closing = closing_elements(skin, shape=blade.mesh.shape)

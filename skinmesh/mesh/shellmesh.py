@@ -9,7 +9,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.definition.blade import MeshRule, Source
+from skinmesh.definition.blade import MeshRule, Source, StationTable
 from skinmesh.frozen import freeze_array
 from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Stack
@@ -60,6 +60,8 @@ class BuildReport:
         Flat-pattern area of each ply, all its layers together, at its exact ends.
     mesh_rule : MeshRule, optional
         What was asked of the mesh; None where that is not known.
+    table : StationTable, optional
+        The station table as it was read; None where that is not known.
     """
 
     warnings: tuple[str, ...] = ()
@@ -71,6 +73,7 @@ class BuildReport:
     developed_areas: Mapping[str, float] = field(default_factory=dict)
     ply_areas: Mapping[str, float] = field(default_factory=dict)
     mesh_rule: MeshRule | None = None
+    table: StationTable | None = None
 
 
 @dataclass(frozen=True, eq=False)

@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.definition.blade import MeshRule
+from skinmesh.definition.blade import MeshRule, StationTable
 from skinmesh.definition.spanwise import Spanwise
 from skinmesh.laminate.code import LaminateCodes, laminate_codes
 from skinmesh.laminate.material import Material
@@ -138,6 +138,7 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "rows": [{"row": k, "label": label, "z_m": _number(z)} for k, (label, z) in enumerate(report.rows)],
         "seams": [{"seam": k, "label": label} for k, label in enumerate(report.seams)],
         "stations_m": _numbers(report.stations),
+        "stations": None if report.table is None else _station_table(report.table),
         "ply_areas_m2": {name: _number(value) for name, value in report.ply_areas.items()},
         "largest_ply_end_move_m": _number(report.ply_end_move),
         "largest_ply_end_move_at": report.ply_end_place,
@@ -161,6 +162,26 @@ def _mesh_rule(rule: MeshRule) -> dict[str, Any]:
         "turning": _number(degrees(rule.turning)),
         "least_spacing": None if rule.least_spacing is None else _along(rule.least_spacing),
     }
+
+
+def _station_table(table: StationTable) -> list[dict[str, Any]]:
+    """The station table, one entry a station; None for a profile that is blended, or a ratio that was not given."""
+    columns = {
+        "z_m": table.z,
+        "chord_m": table.chord,
+        "twist_deg": np.degrees(table.twist),
+        "pitch_axis": table.pitch_axis,
+        "thickness_ratio": table.thickness_ratio,
+        "prebend_m": table.prebend,
+        "sweep_m": table.sweep,
+    }
+    return [
+        {
+            **{name: None if np.isnan(column[k]) else _number(column[k]) for name, column in columns.items()},
+            "profile": profile,
+        }
+        for k, profile in enumerate(table.profile)
+    ]
 
 
 def _along(quantity: Spanwise) -> float | list[Any]:
