@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -166,8 +166,40 @@ def compare_sets(check: str, have: Mapping[str, Ints], wanted: Mapping[str, Ints
     )
 
 
-def compare_directions(check: str, mesh: ShellMesh, element: Ints, turn: Floats) -> Finding:
-    """The line for the directions of plies: how far each is turned from where it should point.
+def compare_materials(
+    check: str, have: Mapping[str, Iterable[float]], wanted: Mapping[str, Iterable[float]]
+) -> Finding:
+    """Constants of a deck's materials against those of the summary.
+
+    Parameters
+    ----------
+    check : str
+    have, wanted : mapping of str to floats
+        By the summary's name of the material, the constants in one order.
+
+    Returns
+    -------
+    Finding
+    """
+    wrong = []
+    for name, values in wanted.items():
+        told, known = list(have.get(name, ())), list(values)
+        if len(told) != len(known) or not np.allclose(told, known, rtol=SAME, atol=0.0):
+            wrong.append(name)
+    return Finding(
+        check,
+        f"{len(wrong)} of {len(wanted)} materials have other constants than the summary",
+        f"fail {SAME:g} of the value",
+        SOURCE,
+        verdict_of(fails=len(wrong)),
+        listed(sorted(wrong)),
+    )
+
+
+def compare_directions(
+    check: str, mesh: ShellMesh, element: Ints, *, have: Floats, wanted: Floats, normal: Floats
+) -> Finding:
+    """How far directions of plies are turned from where they should point.
 
     Parameters
     ----------
@@ -175,8 +207,18 @@ def compare_directions(check: str, mesh: ShellMesh, element: Ints, turn: Floats)
     mesh : ShellMesh
     element : (k,) int array
         Index of the element of each direction.
-    turn : (k,) float array, degrees
+    have, wanted : (k, 3) float array
+        Directions; both are laid into the element's plane.
+    normal : (k, 3) float array
+        Unit normals of the deck's elements.
+
+    Returns
+    -------
+    Finding
     """
+    flat = wanted - np.einsum("ei,ei->e", wanted, normal)[:, None] * normal
+    across = np.einsum("ei,ei->e", np.cross(normal, flat), have)
+    turn = np.degrees(np.abs(np.arctan2(across, np.einsum("ei,ei->e", flat, have))))
     worst = float(turn.max(initial=0.0))
     per_element = np.zeros(len(mesh.cells))
     np.maximum.at(per_element, element, turn)
@@ -192,6 +234,25 @@ def compare_directions(check: str, mesh: ShellMesh, element: Ints, turn: Floats)
     )
 
 
-def unreadable(check: str, error: Exception) -> Finding:
-    """The line for a deck that cannot be read any more."""
-    return Finding(check, f"cannot be read: {error}", "readable", SOURCE, FAIL)
+def lines_of_deck(check: str, make: Callable[[], list[Finding]]) -> list[Finding]:
+    """What a function finds in a file, or the line for a file that cannot be read any more.
+
+    Parameters
+    ----------
+    check : str
+    make : callable
+        Raises DeckError, or what NumPy and Python raise on numbers that are none.
+
+    Returns
+    -------
+    list of Finding
+
+    Examples
+    --------
+    >>> lines_of_deck("bulk data", lambda: int("S"))[0].verdict
+    'fail'
+    """
+    try:
+        return make()
+    except (DeckError, ValueError, IndexError, KeyError) as error:
+        return [Finding(check, f"cannot be read: {error}", "readable", SOURCE, FAIL)]

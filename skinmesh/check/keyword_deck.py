@@ -18,10 +18,11 @@ from skinmesh.check.deck import (
     DeckGeometry,
     compare_directions,
     compare_geometry,
+    compare_materials,
     compare_sets,
     find_numbers,
+    lines_of_deck,
     sorted_geometry,
-    unreadable,
 )
 from skinmesh.check.finding import Finding, listed, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
@@ -67,13 +68,13 @@ def check_keyword_deck(built: BuiltMesh, path: Path) -> list[Finding]:
     -------
     list of Finding
     """
-    try:
-        deck = _read(path.read_text(encoding="ascii"))
-        geometry = _geometry(deck)
-        lines = [compare_geometry(CHECK, built, geometry, has_second_order=True), _sets(built, deck)]
-        return [*lines, *_laminates(built, deck, geometry)] if built.mesh.stacks else lines
-    except (DeckError, ValueError, IndexError, KeyError) as error:
-        return [unreadable(CHECK, error)]
+    return lines_of_deck(CHECK, lambda: _compare(built, _read(path.read_text(encoding="ascii"))))
+
+
+def _compare(built: BuiltMesh, deck: _Deck) -> list[Finding]:
+    geometry = _geometry(deck)
+    lines = [compare_geometry(CHECK, built, geometry, has_second_order=True), _sets(built, deck)]
+    return [*lines, *_laminates(built, deck, geometry)] if built.mesh.stacks else lines
 
 
 def _read(text: str) -> _Deck:
@@ -207,19 +208,10 @@ def _laminates(built: BuiltMesh, deck: _Deck, geometry: DeckGeometry) -> list[Fi
 
 def _materials(built: BuiltMesh, deck: _Deck, names: dict[str, str]) -> Finding:
     known: dict[str, Material] = {layer.material.name: layer.material for s in built.mesh.stacks for layer in s.layers}
-    wrong = []
-    for name, deck_name in names.items():
-        values = [*(getattr(known[name], constant) for constant in _CONSTANTS), known[name].density]
-        have = deck.materials.get(deck_name, [])
-        if len(have) != len(values) or not np.allclose(have, values, rtol=SAME, atol=0.0):
-            wrong.append(name)
-    return Finding(
+    return compare_materials(
         CHECK,
-        f"{len(wrong)} of {len(names)} materials have other constants than the summary",
-        f"fail {SAME:g} of the value",
-        SOURCE,
-        verdict_of(fails=len(wrong)),
-        listed(wrong),
+        {name: deck.materials.get(deck_name, []) for name, deck_name in names.items()},
+        {name: [*(getattr(known[name], constant) for constant in _CONSTANTS), known[name].density] for name in names},
     )
 
 
@@ -235,8 +227,4 @@ def _directions(
     vector = np.repeat(np.array(first).reshape(-1, 3), times, axis=0)
     turned = np.repeat(np.array(angle), times)[:, None]
     wanted = np.cos(turned) * mesh.e1[element] + np.sin(turned) * mesh.e2[element]
-    n = normal[element]
-    flat = wanted - np.einsum("ei,ei->e", wanted, n)[:, None] * n
-    across = np.einsum("ei,ei->e", np.cross(n, flat), vector)
-    off = np.degrees(np.abs(np.arctan2(across, np.einsum("ei,ei->e", flat, vector))))
-    return compare_directions(CHECK, mesh, element, off)
+    return compare_directions(CHECK, mesh, element, have=vector, wanted=wanted, normal=normal[element])
