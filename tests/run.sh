@@ -52,5 +52,7 @@ step() {
 step "ruff check" "$bin/ruff" check .
 step "ruff format" "$bin/ruff" format --check .
 step "mypy" "$bin/mypy"
-step "pytest" "$bin/python" -m pytest "$@"
+# Two processes, however many cores: a solver run of the demonstration deck takes 4 GB.
+export OMP_NUM_THREADS=1
+step "pytest" "$bin/python" -m pytest --numprocesses 2 --dist worksteal "$@"
 exit "$status"
