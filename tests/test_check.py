@@ -32,7 +32,7 @@ from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.files import write
 
-DECKS = ("vtu", "inp", "bdf")
+DECKS = ("vtu", "inp", "bdf", "msh")
 
 
 def report_of(mesh: ShellMesh, directory: Path, *, formats: tuple[str, ...] = DECKS) -> CheckReport:
@@ -68,6 +68,7 @@ def test_a_sound_blade_fails_nowhere(tmp_path: Path, hand: str, order: int, shap
     report = report_of(build_mesh(blade), tmp_path)
     assert failed(report) == []
     assert {f.check for f in report.findings if f.verdict == NOT_MADE} <= {"fidelity", "inputs"}
+    assert [f.verdict for f in lines_of(report, "MSH file")] == [PASS, PASS]
 
 
 @pytest.mark.parametrize("order", [1, 2])
@@ -112,7 +113,7 @@ def test_hostile_names_and_odd_numbers(tmp_path: Path) -> None:
     assert [region.name for region in report.built.mesh.regions] == list(HOSTILE)
     assert report.built.mesh.stacks[0].layers[0].ply == "=1+2"
     assert not lines_of(report, "files agree")[1].where
-    for name in ("joints", "axes", "keyword deck", "bulk data", "mass", "files agree"):
+    for name in ("joints", "axes", "keyword deck", "bulk data", "MSH file", "mass", "files agree"):
         assert all(finding.verdict == PASS for finding in lines_of(report, name)), name
 
 

@@ -357,6 +357,24 @@ def edit_bulk_node(text: str) -> str:
     return "\n".join(lines)
 
 
+def edit_msh_node(data: bytes) -> bytes:
+    """The last bits of a coordinate, a binary number that occurs once."""
+    mesh = sound()
+    values = mesh.nodes[:, 0]
+    found = next(k for k in range(1000, len(values)) if data.count(values[k].tobytes()) == 1)
+    return data.replace(values[found].tobytes(), (values[found] + 1e-6).tobytes())
+
+
+def swap_msh_nodes(data: bytes) -> bytes:
+    """An element's second and fourth node, each a number of eight bytes behind the element's own."""
+    mesh = sound()
+    numbers = mesh.node_number[mesh.connectivity[1000]]
+    old = np.array([mesh.element_number[1000], *numbers]).tobytes()
+    new = np.array([mesh.element_number[1000], *numbers[FLIP]]).tobytes()
+    assert data.count(old) == 1
+    return data.replace(old, new)
+
+
 def edit_summary_mass(text: str) -> str:
     summary = json.loads(text)
     summary["mass_kg"] *= 1.001
@@ -397,6 +415,14 @@ EDITS = {
     "material angle": ("bdf", edit_theta, "bulk data"),
     "density in MAT8": ("bdf", lambda text: text.replace("1920.0", "1921.0", 1), "bulk data"),
     "bulk data cut short": ("bdf", lambda text: text[: len(text) // 2], "bulk data"),
+    "a word of the MSH file": (
+        "msh",
+        lambda data: data.replace(b"suction main cap", b"suction main cup", 1),
+        "MSH file",
+    ),
+    "an MSH file cut short": ("msh", lambda data: data[: len(data) // 2], "MSH file"),
+    "node of the MSH file": ("msh", edit_msh_node, "MSH file"),
+    "nodes of an element of the MSH file": ("msh", swap_msh_nodes, "MSH file"),
     "mass in the summary": ("summary.json", edit_summary_mass, "mass"),
     # The decks are held against the table: that both differ from it points at the table.
     "thickness in the table": ("stacks.csv", edit_table_thickness, "files agree, keyword deck, bulk data"),
@@ -411,7 +437,7 @@ EDITS = {
 @pytest.fixture(scope="module")
 def sound_files(tmp_path_factory: pytest.TempPathFactory) -> Mapping[str, bytes]:
     directory = tmp_path_factory.mktemp("files")
-    write(sound(), directory, formats=FORMATS)
+    write(sound(), directory, formats=(*FORMATS, "msh"))
     return {path.name: path.read_bytes() for path in directory.iterdir()}
 
 
@@ -421,12 +447,16 @@ def test_a_hand_edited_file_is_noticed(
 ) -> None:
     ending, change, check = EDITS[edit]
     for name, data in sound_files.items():
-        (tmp_path / name).write_bytes(data)
+        if not name.endswith(".msh") or ending == "msh":
+            (tmp_path / name).write_bytes(data)
     path = tmp_path / f"{sound().stem}.{ending}"
-    before = path.read_text(encoding="utf-8")
-    path.write_text(change(before), encoding="utf-8", newline="\n")
-    assert path.read_text(encoding="utf-8") != before
-    assert caught(tmp_path, sound_verdicts) == dict.fromkeys(check.split(", "), FAIL)
+    before = path.read_bytes()
+    is_text = ending != "msh"
+    after = change(before.decode()).encode() if is_text else change(before)
+    assert after != before
+    path.write_bytes(after)
+    known = sound_verdicts if is_text else {**sound_verdicts, "MSH file": PASS}
+    assert caught(tmp_path, known) == dict.fromkeys(check.split(", "), FAIL)
 
 
 def test_caps_that_all_end_at_one_place_are_named(tmp_path: Path) -> None:

@@ -122,6 +122,8 @@ def compare_geometry(check: str, built: BuiltMesh, deck: DeckGeometry, *, has_se
     if np.any(element < 0):
         wrong.append(f"{np.count_nonzero(element < 0)} elements are missing")
     wanted = mesh.node_number[mesh.connectivity]
+    if deck.connectivity.shape[1] < wanted.shape[1]:
+        raise DeckError(f"its elements have {deck.connectivity.shape[1]} nodes, not {wanted.shape[1]}")
     have = deck.connectivity[np.maximum(element, 0)][:, : wanted.shape[1]]
     other = (element >= 0) & np.any(have != wanted, axis=1)
     if other.any():

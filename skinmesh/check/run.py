@@ -19,6 +19,7 @@ from skinmesh.check.finding import FAIL, VERDICTS, WARN, Finding, not_made
 from skinmesh.check.joints import check_joints, check_normals
 from skinmesh.check.keyword_deck import check_keyword_deck
 from skinmesh.check.limits import set_limits
+from skinmesh.check.msh_file import check_msh_file
 from skinmesh.check.overlap import check_overlap
 from skinmesh.check.plies import check_plies
 from skinmesh.check.reading import BuiltMesh, read_built_mesh
@@ -149,8 +150,9 @@ def _check_decks(built: BuiltMesh) -> list[Finding]:
     ):
         path = built.file(ending)
         findings += check(built, path) if path.is_file() else [not_made(name, f"there is no {path.name}")]
-    if built.file("msh").is_file():
-        findings.append(not_made("MSH file", "it is not read back here"))
+    mesh_file = built.file("msh")
+    if mesh_file.is_file():
+        findings += check_msh_file(built, mesh_file)
     return findings
 
 

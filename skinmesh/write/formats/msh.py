@@ -41,7 +41,7 @@ def write_msh(mesh: ShellMesh, path: Path) -> None:
         The file does not hold what was written.
     """
     regions = np.unique(mesh.region)
-    names = _group_names([*(mesh.regions[region].name for region in regions), *mesh.node_sets])
+    names = group_names([*(mesh.regions[region].name for region in regions), *mesh.node_sets])
     region_names, set_names = names[: len(regions)], names[len(regions) :]
     with gmsh_session() as gmsh:
         _add_regions(gmsh, mesh, regions, region_names)
@@ -62,8 +62,22 @@ def write_msh(mesh: ShellMesh, path: Path) -> None:
         raise OutputError(f"{path.name} does not hold what was written: {'; '.join(wrong)}")
 
 
-def _group_names(names: Iterable[str]) -> list[str]:
-    """Names as the format can hold them: on one line, without double quotes, short enough, and still distinct."""
+def group_names(names: Iterable[str]) -> list[str]:
+    """Names as the format can hold them: on one line, without double quotes, short enough, and still distinct.
+
+    Parameters
+    ----------
+    names : iterable of str
+
+    Returns
+    -------
+    list of str
+
+    Examples
+    --------
+    >>> group_names(['the "cap"', "the 'cap'"])
+    ["the 'cap'", "the 'cap' (2)"]
+    """
     found: dict[str, None] = {}
     for name in names:
         plain = " ".join(name.replace('"', "'").split())
