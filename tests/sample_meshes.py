@@ -194,6 +194,51 @@ def box_with_web(
     )
 
 
+def strip(
+    n_across: int,
+    n_along: int,
+    *,
+    width: float,
+    length: float,
+    layers: Sequence[Layer],
+    offset: float = 0.0,
+    shape: str = "quad",
+) -> ShellMesh:
+    """A flat strip along z, across y, of second order; e3 is +x.
+
+    Parameters
+    ----------
+    n_across, n_along : int
+    width, length : float, m
+        y runs from minus to plus half of the width, z from 0.
+    layers : sequence of Layer
+    offset : float
+        As of :class:`ShellMesh`.
+    shape : str
+        'quad' or 'triangle'.
+    """
+    index = _half_step_grid(n_across, n_along, closed=False)
+    level, across = _half_steps(index)
+    y, z = width * (across / (2 * n_across) - 0.5), length * level / (2 * n_along)
+    cells = _grid_cells(index, shape)
+    mesh = _assemble(
+        np.column_stack([np.zeros(len(y)), y, z]),
+        cells,
+        region=np.zeros(len(cells), dtype=np.int64),
+        stack=np.zeros(len(cells), dtype=np.int64),
+        stacks=(Stack(tuple(layers)),),
+        sheet=np.zeros(len(y)),
+        row=level / (2 * n_along),
+        seam=across / (2 * n_across),
+        order=2,
+        title="Sample strip",
+        length=length,
+        n_bands=1,
+        foot_sets={},
+    )
+    return replace(mesh, offset=np.full(len(cells), offset))
+
+
 def numbered_box(order: int = 2, shape: str = "quad") -> ShellMesh:
     """A box whose node and element numbers are none that a reader would make up, with hostile names."""
     mesh = box_with_web(layers=sandwich(), web_layers=sandwich()[:2], order=order, shape=shape)

@@ -166,14 +166,22 @@ def ring_loads(mesh: ShellMesh, level: float, *, axial: float = 0.0, tangential:
     return "\n".join(lines) + "\n"
 
 
+def all_moves(run: SolverRun, mesh: ShellMesh) -> NDArray:
+    """(n, 3) displacement of every node, from a run that printed those of ALL once."""
+    table = run.displacements("ALL")
+    by_number = np.argsort(mesh.node_number)
+    moves = np.full((len(mesh.points), 3), np.nan)
+    moves[by_number[np.searchsorted(mesh.node_number[by_number], table[:, 0].astype(int))]] = table[:, 1:]
+    assert np.all(np.isfinite(moves))
+    return moves
+
+
 def tube_strain_and_twist(mesh: ShellMesh, folder: Path, *, radius: float, axial: float, tangential: float):
     """Axial strain and rate of twist of a tube about z between a third and two thirds of its length."""
     length = mesh.points[:, 2].max()
     step = "*STEP\n*STATIC\n" + ring_loads(mesh, length, axial=axial, tangential=tangential)
     step += "*NODE PRINT,NSET=ALL\nU\n*END STEP\n"
-    table = run_solver(mesh, folder, step=step).displacements("ALL")
-    moves = np.full((len(mesh.points), 3), np.nan)
-    moves[table[:, 0].astype(int) - 1] = table[:, 1:]
+    moves = all_moves(run_solver(mesh, folder, step=step), mesh)
     means = []
     for level in (length / 3, 2 * length / 3):
         corners, _ = ring_of(mesh, level)
