@@ -28,13 +28,13 @@ from skinmesh.commands.page_command import page
 from skinmesh.errors import InputError
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
-from skinmesh.page.develop import develop
 from skinmesh.page.document import embedded_json
-from skinmesh.page.gather import MATERIAL_TONES, gather_arrays, gather_words
+from skinmesh.page.gather import gather_arrays, gather_words
 from skinmesh.page.packing import pack_arrays
 from skinmesh.page.spanwise import beam_along, shape_along
 from skinmesh.page.write import write_page
-from skinmesh.show.palette import part_colours, rgb
+from skinmesh.show.develop import develop
+from skinmesh.show.palette import MATERIAL_TONES, part_colours, rgb
 
 TITLE = "</script><script>window.ran = 1</script><img src=x onerror='window.ran = 2'>{{MESH}}"
 

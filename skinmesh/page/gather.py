@@ -14,15 +14,13 @@ from skinmesh.check.reading import BuiltMesh
 from skinmesh.laminate.stack import Stack
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
 from skinmesh.mesh.shellmesh import NO_STACK, ShellMesh
-from skinmesh.page.develop import DevelopedMesh, develop
 from skinmesh.page.spanwise import beam_along, shape_along
+from skinmesh.show.develop import DevelopedMesh, develop
 from skinmesh.show.outline import border_edges
 from skinmesh.show.paint import round_levels
-from skinmesh.show.palette import AXIS_COLOURS, BARE, part_colours, part_name, scale_colours
+from skinmesh.show.palette import AXIS_COLOURS, BARE, MATERIAL_TONES, part_colours, part_name, scale_colours
 from skinmesh.write.deck_text import CAUTION
 
-MATERIAL_TONES = ("#5f6f8f", "#e8d9a0", "#9db4a0", "#c4936a", "#dcdcd6", "#6b4f3a", "#b9cbe0", "#3d3d3d")
-"""Fills of the plies in a cut; apart in lightness too, and none of them that of a region."""
 TRIAL_FILE = "trial.json"
 _LARGEST_ASPECT = 100.0
 _UNIT = 32767

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from skinmesh.beam.meshcut import element_row_middles, mesh_sections
 from skinmesh.definition.blade import COUNTER_CLOCKWISE
 from skinmesh.mesh.shellmesh import ShellMesh
-from skinmesh.page.develop import NOSE
+from skinmesh.show.develop import NOSE
 
 Floats = NDArray[np.float64]
 

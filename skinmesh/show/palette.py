@@ -1,7 +1,9 @@
 """Colours: the same for the same part of every blade, apart for colour-blind eyes, and readable in print.
 
-Strong tones are those of Okabe and Ito, "Color Universal Design" (2008), from memory; panels are pale, so that caps,
-strips and webs stand out of them.
+Panels are pale, so that caps, strips and webs stand out of them. The tones began as those of Okabe and Ito, "Color
+Universal Design" (2008), from memory, and were then moved by a search until any two of the fourteen regions' tones, and
+any two of the materials', differ by at least 10 by CIEDE2000 for full colour sight and for each kind of colour
+blindness. ``examples/pictures/colour_sight.py`` draws and measures it.
 """
 
 from __future__ import annotations
@@ -22,16 +24,19 @@ BARE = "#e4e4e4"
 AXIS_COLOURS = ("#d55e00", "#0072b2", "#222222")
 """Of e1, e2 and e3."""
 
+MATERIAL_TONES = ("#5f6f8f", "#e8d9a0", "#a2afa0", "#c4936a", "#dcdcd6", "#6b4f3a", "#b2cce2", "#3d3d3d")
+"""Fills of the plies in a cut, none of them that of a region."""
+
 _EDGES = {
-    ("strip", "leading"): "#0072b2",
-    ("strip", "trailing"): "#009e73",
-    ("panel", "leading"): "#b9dcf2",
-    ("panel", "middle"): "#f6edb0",
-    ("panel", "trailing"): "#b5e0d0",
+    ("strip", "leading"): "#086fb7",
+    ("strip", "trailing"): "#289b6a",
+    ("panel", "leading"): "#d2e7f9",
+    ("panel", "middle"): "#f7eebb",
+    ("panel", "trailing"): "#9cd3be",
 }
-_CAPS = ("#d55e00", "#e69f00", "#a34700", "#f3c35c")
-_WEBS = ("#cc79a7", "#8a4a72", "#e3b3ce", "#5e2f4d")
-_OTHER = ("#999999", "#bdbdbd", "#7a7a7a", "#d5d5d5")
+_CAPS = ("#d46114", "#e29812", "#a44906", "#faca62")
+_WEBS = ("#c574ad", "#8b4972", "#d0a9cc", "#602e4d")
+_OTHER = ("#969696", "#bdbdbd", "#7a7a7a", "#d5d5d5")
 _SCALE = ("#f4efdc", "#cfdcc6", "#93c0bd", "#549cb0", "#2c7299", "#1c4a79", "#101f4b")
 
 
@@ -59,7 +64,7 @@ def part_colours(regions: Sequence[Region]) -> dict[str, str]:
     Examples
     --------
     >>> part_colours([Region("pressure main cap", -1, "cap"), Region("suction main cap", 1, "cap")])
-    {'main cap': '#d55e00'}
+    {'main cap': '#d46114'}
     """
     colours: dict[str, str] = {}
     taken: dict[str, int] = {}
