@@ -9,7 +9,6 @@ from base64 import b64decode, b64encode
 from dataclasses import replace
 from hashlib import sha256
 from html import unescape
-from itertools import combinations
 from pathlib import Path
 from zlib import decompress
 
@@ -34,7 +33,7 @@ from skinmesh.page.packing import pack_arrays
 from skinmesh.page.spanwise import beam_along, shape_along
 from skinmesh.page.write import write_page
 from skinmesh.show.develop import develop
-from skinmesh.show.palette import MATERIAL_TONES, part_colours, rgb
+from skinmesh.show.palette import MATERIAL_TONES, part_colours
 
 TITLE = "</script><script>window.ran = 1</script><img src=x onerror='window.ran = 2'>{{MESH}}"
 
@@ -177,36 +176,6 @@ def test_parts_keep_the_colours_of_the_pictures_and_materials_take_none_of_them(
     colours = part_colours(built.mesh.regions)
     assert {region["part"]: region["colour"] for region in words["regions"]} == colours
     assert not set(MATERIAL_TONES) & set(colours.values())
-
-
-# Full protanopia, deuteranopia and tritanopia on linear RGB: Machado, Oliveira & Fernandes, "A Physiologically-based
-# Model for Simulation of Color Vision Deficiency" (2009), from memory.
-COLOUR_BLINDNESS = {
-    "none": ((1, 0, 0), (0, 1, 0), (0, 0, 1)),
-    "red": ((0.152286, 1.052583, -0.204868), (0.114503, 0.786281, 0.099216), (-0.003882, -0.048116, 1.051998)),
-    "green": ((0.367322, 0.860646, -0.227968), (0.280085, 0.672501, 0.047413), (-0.011820, 0.042940, 0.968881)),
-    "blue": ((1.255528, -0.076749, -0.178779), (-0.078411, 0.930809, 0.147602), (0.004733, 0.691367, 0.303900)),
-}
-
-
-@pytest.mark.parametrize("kind", COLOUR_BLINDNESS)
-def test_materials_of_a_cut_stay_apart_for_colour_blind_eyes(kind: str) -> None:
-    places = [lab(np.array(COLOUR_BLINDNESS[kind]) @ linear(colour)) for colour in MATERIAL_TONES]
-    # A difference of 2.3 is just noticeable (CIE 1976).
-    assert min(np.linalg.norm(a - b) for a, b in combinations(places, 2)) > 10.0
-
-
-def linear(colour: str) -> np.ndarray:
-    parts = rgb([colour])[0]
-    return np.where(parts <= 0.04045, parts / 12.92, ((parts + 0.055) / 1.055) ** 2.4)
-
-
-def lab(colour: np.ndarray) -> np.ndarray:
-    """CIELAB of linear sRGB under D65."""
-    to_xyz = np.array([[0.4124, 0.3576, 0.1805], [0.2126, 0.7152, 0.0722], [0.0193, 0.1192, 0.9505]])
-    xyz = to_xyz @ np.clip(colour, 0, 1) / np.array([0.9505, 1.0, 1.089])
-    f = np.where(xyz > 0.008856, np.cbrt(xyz), 7.787 * xyz + 16 / 116)
-    return np.array([116 * f[1] - 16, 500 * (f[0] - f[1]), 200 * (f[1] - f[2])])
 
 
 def test_checks_are_read_where_fresh_and_made_where_stale(hostile: Path) -> None:

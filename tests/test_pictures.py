@@ -18,7 +18,7 @@ from skinmesh.mesh.shellmesh import Region
 from skinmesh.show import render as render_module
 from skinmesh.show.outline import border_edges, cut_at
 from skinmesh.show.paint import PAINTS, paint_regions, paint_thickness, round_levels
-from skinmesh.show.palette import part_colours, rgb
+from skinmesh.show.palette import part_colours
 from skinmesh.show.picture import SUBJECTS, picture, require_pictures
 from skinmesh.show.render import Camera, Frame, frame_of, render, shaded
 
@@ -155,19 +155,6 @@ def test_a_part_keeps_its_colour_whatever_the_order_and_on_both_sides() -> None:
     forward, short = part_colours(REGIONS), part_colours(REGIONS[2:9])
     assert all(forward[name] == short[name] for name in short)
     assert len(set(forward.values())) == len(forward) == len(NAMES) + 3
-
-
-def test_neighbours_stay_apart_for_red_green_blind_eyes() -> None:
-    # Viénot, Brettel and Mollon (1999), eq. for deuteranopes in linear RGB, from memory.
-    colours = part_colours(REGIONS)
-    linear = rgb(list(colours.values())) ** 2.2
-    red_green = 0.29275 * linear[:, 0] + 0.70725 * linear[:, 1]
-    blue = -0.02234 * linear[:, 0] + 0.02234 * linear[:, 1] + linear[:, 2]
-    seen = np.column_stack([red_green, blue]).clip(0.0) ** (1 / 2.2)
-    around = [*NAMES, "trailing base"]
-    place = {name: seen[k] for k, name in enumerate(colours)}
-    apart = [np.linalg.norm(place[a] - place[b]) for a, b in pairwise(around)]
-    assert min(apart) > 0.12
 
 
 @given(st.floats(-1e3, 1e3), st.floats(0.0, 1e3), st.booleans())
