@@ -140,7 +140,7 @@ def test_version(run) -> None:
         (["build", "small.yaml", "--size", "wide"], "'wide' is not a valid float"),
         (
             ["build", "small.yaml", "--formats", "vtu,bdff"],
-            "no format 'bdff'; known: bdf, inp, msh, vtu; did you mean 'bdf'",
+            "no format 'bdff'; known: bdf, inp, msh, vtm, vtu; did you mean 'bdf'",
         ),
     ],
 )
@@ -158,7 +158,8 @@ def test_build_writes_every_file_and_sums_up(run, small: Path) -> None:
     outcome = run("build", "small.yaml")
     assert outcome.status == 0, outcome.err
     directory = small / "small-mesh"
-    names = {f"small.{ending}" for ending in ("vtu", "msh", "inp", "bdf", "stacks.csv", "summary.json")}
+    endings = ("vtu", "vtm", "vtm.d", "msh", "inp", "bdf", "stacks.csv", "summary.json")
+    names = {f"small.{ending}" for ending in endings}
     assert {path.name for path in directory.iterdir()} == names
     assert all(name in outcome.out for name in names)
     summary = json.loads((directory / "small.summary.json").read_text())

@@ -3,15 +3,18 @@
 from __future__ import annotations
 
 import os
+import re
 import signal
 import subprocess
 import sys
+from collections.abc import Iterator
 from dataclasses import fields, replace
+from itertools import count
 from pathlib import Path
 
 import numpy as np
 import pytest
-from sample_meshes import box_with_web, sandwich, tube
+from sample_meshes import box_with_web, numbered_box, sandwich, tube
 
 from skinmesh.errors import InputError, OutputError
 from skinmesh.mesh.shellmesh import ShellMesh
@@ -56,10 +59,11 @@ def failing_format(error: BaseException) -> Format:
 
 def test_files_and_sizes(tmp_path: Path) -> None:
     written = write(box(), tmp_path / "out")
-    assert [file.name for file in written] == [*(f"sample.{name}" for name in DEFAULT_FORMATS), *TABLES]
-    assert {file.name: file.size for file in written} == {
-        path.name: path.stat().st_size for path in (tmp_path / "out").iterdir()
-    }
+    names = [f"sample.{name}" for name in DEFAULT_FORMATS]
+    assert [file.name for file in written] == [*names[:2], "sample.vtm.d/", *names[2:], *TABLES]
+    sizes = {path.name: path.stat().st_size for path in (tmp_path / "out").iterdir() if path.is_file()}
+    sizes["sample.vtm.d/"] = sum(path.stat().st_size for path in (tmp_path / "out" / "sample.vtm.d").iterdir())
+    assert {file.name: file.size for file in written} == sizes
     assert all(file.size > 0 for file in written)
 
 
@@ -67,6 +71,74 @@ def test_every_module_of_formats_is_in_the_register() -> None:
     folder = Path(sys.modules["skinmesh.write.formats"].__path__[0])
     assert {path.stem for path in folder.glob("[a-z]*.py")} == set(FORMATS)
     assert set(DEFAULT_FORMATS) <= set(FORMATS)
+
+
+def test_a_folder_holds_only_what_the_next_build_knows_as_its_own(tmp_path: Path) -> None:
+    """Else it would never be removed."""
+    for stem in ("sample", "Blatt [1] ä"):
+        mesh = replace(numbered_box(), stem=stem)
+        write(mesh, tmp_path / stem)
+        files = list((tmp_path / stem / f"{stem}.vtm.d").iterdir())
+        assert len(files) == len(mesh.regions) + len(mesh.node_sets)
+        assert all(re.fullmatch(FORMATS["vtm"].parts, path.name) for path in files)
+        write(mesh, tmp_path / stem, formats=[])
+        assert sorted(contents(tmp_path / stem)) == [name.replace("sample", stem) for name in TABLES]
+
+
+@pytest.mark.parametrize("exchange", [True, False])
+@pytest.mark.parametrize("neighbour", [True, False])
+def test_blocks_of_an_earlier_mesh_go_with_it(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, exchange: bool, neighbour: bool
+) -> None:
+    """The box has a web and its feet, the tube has not; other folders stay."""
+    if not exchange:
+        monkeypatch.setattr(placing, "_LIBC", None)
+    out = tmp_path / "out"
+    write(box(), out, formats=["vtm"])
+    assert (out / "sample.vtm.d" / "region-3-fore-web.vtu").is_file()
+    if neighbour:
+        (out / "other.vtm.d").mkdir()
+        (out / "other.vtm.d" / "region-1.vtu").write_text("of another blade")
+    write(tube(8, 2), out, formats=["vtm"])
+    write(tube(8, 2), tmp_path / "fresh", formats=["vtm"])
+    found = contents(out)
+    assert (found.pop("other.vtm.d", None), found.pop("other.vtm.d/region-1.vtu", None)) == (
+        (b"directory", b"of another blade") if neighbour else (None, None)
+    )
+    assert found == contents(tmp_path / "fresh")
+    assert {path.name for path in tmp_path.iterdir()} == {"out", "fresh"}
+
+
+@pytest.mark.parametrize("name", ["notes.txt", "region-1.vtu.bak", "region-9/"])
+@pytest.mark.parametrize("formats", [["vtm"], ["inp"]])
+def test_a_folder_of_blocks_with_something_else_in_it_is_refused_before_any_work(
+    tmp_path: Path, name: str, formats: list[str]
+) -> None:
+    out = tmp_path / "out"
+    write(box(), out, formats=["vtm"])
+    foreign = out / "sample.vtm.d" / name
+    foreign.mkdir() if name.endswith("/") else foreign.write_text("mine")
+    before = contents(tmp_path)
+    told: list[str] = []
+    with pytest.raises(OutputError, match=re.escape(f"holds '{name.rstrip('/')}', which skinmesh did not write")):
+        write(tube(8, 2), out, formats=formats, progress=lambda stage, _done: told.append(stage))
+    assert contents(tmp_path) == before
+    assert not told
+
+
+def test_a_file_or_link_in_place_of_the_folder_of_blocks(tmp_path: Path) -> None:
+    """Neither is ours: nothing is replaced, and what the link leads to stays."""
+    (tmp_path / "mine").mkdir()
+    (tmp_path / "mine" / "region-1.vtu").write_text("mine")
+    for kind in ("file", "link"):
+        out = tmp_path / kind
+        out.mkdir()
+        place = out / "sample.vtm.d"
+        place.write_text("mine") if kind == "file" else place.symlink_to(tmp_path / "mine")
+        before = contents(tmp_path)
+        with pytest.raises(OutputError, match="cannot write into"):
+            write(box(), out, formats=["vtm"])
+        assert contents(tmp_path) == before
 
 
 def test_writing_leaves_the_mesh_as_it_was(tmp_path: Path) -> None:
@@ -247,6 +319,32 @@ def test_a_failing_move_is_undone(tmp_path: Path, monkeypatch: pytest.MonkeyPatc
     assert contents(tmp_path) == before
 
 
+def test_a_failing_move_of_a_folder_is_undone(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """File, folder and two tables out, the same in, and the last rename: each may fail."""
+    out = tmp_path / "out"
+    write(box(), out, formats=["vtm"])
+    (out / "notes").write_text("mine")
+    before = contents(tmp_path)
+    rename = Path.rename
+    for step in range(1, 11):
+        calls = count(1)
+
+        def failing_rename(path: Path, target: Path, calls: Iterator[int] = calls, step: int = step) -> Path:
+            if next(calls) == step:
+                raise OSError(5, "Input/output error")
+            return rename(path, target)
+
+        monkeypatch.setattr(Path, "rename", failing_rename)
+        if step == 10:  # one more than there are
+            break
+        with pytest.raises(OutputError, match="Input/output error"):
+            write(tube(8, 2), out, formats=["vtm"])
+        assert contents(tmp_path) == before
+    write(tube(8, 2), out, formats=["vtm"])
+    assert not (out / "sample.vtm.d" / "region-3-fore-web.vtu").exists()
+    assert (out / "notes").read_text() == "mine"
+
+
 VICTIM = """
 import os, signal, sys
 from pathlib import Path
@@ -357,5 +455,5 @@ def test_names_of_other_languages_in_every_file(tmp_path: Path) -> None:
         regions=tuple(replace(region, name=name) for region, name in zip(mesh.regions, names, strict=True)),
     )
     written = write(mesh, tmp_path / "out")
-    assert len(written) == 6
+    assert len(written) == len(DEFAULT_FORMATS) + 3
     assert "Gürtel außen" in (tmp_path / "out" / "sample.summary.json").read_text(encoding="utf-8")

@@ -7,7 +7,7 @@ then, and what a reader finds in the directory if the process is killed at any m
 * It holds nothing but files of ours, and the system can exchange two directories (Linux): one exchange. All old, or
   all new.
 * It holds other files too, or is our working directory: they stay untouched, and ours are moved one by one, first all
-  old files out, then all new files in. Never old beside new; what is missing, the next run puts back.
+  old files and folders out, then all new ones in. Never old beside new; what is missing, the next run puts back.
 
 A run that was killed leaves its hidden directory behind. The next run into the same directory undoes what was half done
 and removes it; a lock on the hidden directory tells it from that of a run which still works.
@@ -74,7 +74,8 @@ def new_files(directory: Path, *, is_own: Callable[[str], bool]) -> Iterator[Pat
         Where the files shall lie in the end; made, with its parents, where it is missing.
     is_own : callable
         Whether a file of this name in ``directory`` is one of ours. Those that are not made anew are removed; all other
-        files are left alone.
+        files are left alone. It is asked for ``name/`` about a folder, and for ``name/file`` about all that lies in a
+        folder of ours.
 
     Yields
     ------
@@ -84,7 +85,8 @@ def new_files(directory: Path, *, is_own: Callable[[str], bool]) -> Iterator[Pat
     Raises
     ------
     OutputError
-        ``directory`` is not a directory.
+        ``directory`` is not a directory, or a folder of ours in it holds what is not ours; everything is as it was
+        before.
     OSError
         The system refused; everything is as it was before.
     """
@@ -97,6 +99,8 @@ def new_files(directory: Path, *, is_own: Callable[[str], bool]) -> Iterator[Pat
             undo.callback(_remove_if_empty, parent)
         home = _home(directory)
         _clear_up(home, directory)
+        if directory.exists():
+            _own_entries(directory, is_own)  # refuses before the work is done
         stage = home / f"{_mark(directory)}new-{token_hex(4)}"
         stage.mkdir()
         with _removed_at_last(stage):
@@ -173,12 +177,26 @@ def _put_in_place(stage: Path, directory: Path, is_own: Callable[[str], bool]) -
     if not directory.exists():
         stage.rename(directory)
         return
-    hidden = _mark(directory)
-    entries = [path for path in directory.iterdir() if not path.name.startswith(hidden)]
-    own = [path for path in entries if is_own(path.name) and not path.is_dir()]
-    if len(own) == len(entries) and _may_be_exchanged(stage, directory) and _exchange(stage, directory):
+    own, has_others = _own_entries(directory, is_own)
+    if not has_others and _may_be_exchanged(stage, directory) and _exchange(stage, directory):
         return
     _move(stage, directory, own)
+
+
+def _own_entries(directory: Path, is_own: Callable[[str], bool]) -> tuple[list[Path], bool]:
+    """Files and folders of ours in a directory, and whether it holds others too."""
+    hidden = _mark(directory)
+    entries = [path for path in directory.iterdir() if not path.name.startswith(hidden)]
+    folders = [path for path in entries if path.is_dir() and not path.is_symlink() and is_own(f"{path.name}/")]
+    for folder in folders:
+        foreign = sorted(
+            path.name for path in folder.iterdir() if path.is_dir() or not is_own(f"{folder.name}/{path.name}")
+        )
+        if foreign:
+            text = f"{folder} is to be replaced, but holds '{foreign[0]}', which skinmesh did not write; move it"
+            raise OutputError(text)
+    own = folders + [path for path in entries if is_own(path.name) and not path.is_dir()]
+    return own, len(own) < len(entries)
 
 
 def _may_be_exchanged(stage: Path, directory: Path) -> bool:

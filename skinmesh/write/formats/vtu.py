@@ -5,13 +5,11 @@ The one format that holds the whole mesh, and so the one that is read back.
 
 from __future__ import annotations
 
-import re
 import zlib
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from xml.etree.ElementTree import ParseError
-from xml.sax.saxutils import quoteattr
 
 import meshio
 import numpy as np
@@ -19,11 +17,8 @@ from numpy.typing import NDArray
 
 from skinmesh.errors import InputError, Problem
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.write.grid import SHELL_KINDS, mesh_grid, write_grid
 from skinmesh.write.registry import register_format
-
-_CELL = {3: "triangle", 4: "quad", 6: "triangle6", 8: "quad8"}
-_NOT_XML = re.compile("[^\t\n\r\u0020-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
-_GRID = b"<UnstructuredGrid>"
 
 
 @dataclass(frozen=True, eq=False)
@@ -71,8 +66,8 @@ def read_vtu(path: Path) -> VtuContent:
         text = f"cannot be read as VTU ({str(error) or type(error).__name__}); build the mesh again"
         raise InputError([Problem(path.name, 0, "", text)]) from error
     kinds = [block.type for block in found.cells]
-    if len(kinds) != 1 or kinds[0] not in _CELL.values():
-        text = f"holds cells of the kinds {kinds}; wanted is one of {', '.join(_CELL.values())}"
+    if len(kinds) != 1 or kinds[0] not in SHELL_KINDS.values():
+        text = f"holds cells of the kinds {kinds}; wanted is one of {', '.join(SHELL_KINDS.values())}"
         raise InputError([Problem(path.name, 0, "", text)])
     return VtuContent(
         np.asarray(found.points, dtype=float),
@@ -84,87 +79,22 @@ def read_vtu(path: Path) -> VtuContent:
 
 
 def write_vtu(mesh: ShellMesh, path: Path) -> None:
-    """Write a mesh as VTU.
-
-    Cell arrays: ``region`` and ``stack`` (one-based, 0 where no ply lies), ``side``, ``thickness`` (m), ``areal_mass``
-    (kg/m²), ``plies``, ``e1``, ``e2``, ``e3``, ``element``, ``offset`` (height of the reference surface over the
-    laminate's middle, as a share of the thickness). Point arrays: ``sheet``, ``row``, ``seam``, ``node``.
+    """Write a mesh as VTU, with the arrays of :func:`skinmesh.write.grid.mesh_grid`.
 
     The names stand in the file's field data, each as the name of an integer array: ``region: suction main cap`` holds
     the number of that region, ``stack: 1b4f0e98`` that of the stack of this content, ``node set: root`` the solver
-    numbers of its nodes, ``title: …`` nothing but a nought. Text arrays would be plainer, but meshio refuses a file
-    that has any.
+    numbers of its nodes, ``title: …`` nothing but a nought.
 
     Parameters
     ----------
     mesh : ShellMesh
     path : Path
     """
-    meshio.vtu.write(
-        str(path),
-        meshio.Mesh(
-            mesh.nodes,
-            [(_CELL[mesh.connectivity.shape[1]], mesh.connectivity)],
-            point_data=_point_arrays(mesh),
-            cell_data={name: [array] for name, array in _cell_arrays(mesh).items()},
-        ),
-        binary=True,
-        compression="zlib",
-    )
-    _insert_names(mesh, path)
-
-
-def _cell_arrays(mesh: ShellMesh) -> dict[str, NDArray[np.generic]]:
-    return {
-        "region": (mesh.region + 1).astype(np.int32),
-        "stack": (mesh.stack + 1).astype(np.int32),
-        "side": mesh.side.astype(np.int32),
-        "thickness": mesh.thickness,
-        "areal_mass": mesh.areal_mass,
-        "plies": mesh.n_plies.astype(np.int32),
-        "e1": mesh.e1,
-        "e2": mesh.e2,
-        "e3": mesh.e3,
-        "element": mesh.element_number,
-        "offset": mesh.offset,
-    }
-
-
-def _point_arrays(mesh: ShellMesh) -> dict[str, NDArray[np.generic]]:
-    n = mesh.n_nodes
-    return {
-        "sheet": mesh.sheet[:n].astype(np.int32),
-        "row": mesh.row[:n],
-        "seam": mesh.seam[:n],
-        "node": mesh.node_number[:n],
-    }
-
-
-def _insert_names(mesh: ShellMesh, path: Path) -> None:
-    """Put the field data, which meshio does not write, where the grid begins."""
-    block = "".join(_field_array(name, values) for name, values in _named_numbers(mesh))
-    before, grid, after = path.read_bytes().partition(_GRID)
-    with path.open("wb") as file:
-        file.writelines((before, grid, f"\n<FieldData>\n{block}</FieldData>".encode(), after))
-
-
-def _named_numbers(mesh: ShellMesh) -> Iterator[tuple[str, Iterable[int]]]:
-    yield f"title: {mesh.title}", [0]
-    for number, region in enumerate(mesh.regions, start=1):
-        yield f"region: {region.name}", [number]
-    for number, stack in enumerate(mesh.stacks, start=1):
-        yield f"stack: {stack.content_name}", [number]
-    for name in mesh.node_sets:
-        yield f"node set: {name}", mesh.node_number[mesh.node_set(name)].tolist()
-
-
-def _field_array(name: str, values: Iterable[int]) -> str:
-    numbers = [str(value) for value in values]
-    text = " ".join(numbers) or " "  # meshio stumbles over an element without text
-    attributes = (
-        f'type="Int64" Name={quoteattr(_NOT_XML.sub(" ", name))} NumberOfTuples="{len(numbers)}" format="ascii"'
-    )
-    return f"<DataArray {attributes}>{text}</DataArray>\n"
+    names = {f"title: {mesh.title}": np.zeros(1, dtype=np.int64)}
+    names |= {f"region: {region.name}": np.array([k]) for k, region in enumerate(mesh.regions, start=1)}
+    names |= {f"stack: {stack.content_name}": np.array([k]) for k, stack in enumerate(mesh.stacks, start=1)}
+    names |= {f"node set: {name}": mesh.node_number[mesh.node_set(name)] for name in mesh.node_sets}
+    write_grid(mesh_grid(mesh), path, names=names)
 
 
 register_format("vtu", summary="VTU, compressed, opens in VTK's viewers", write=write_vtu)
