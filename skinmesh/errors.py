@@ -64,6 +64,10 @@ class InputError(SkinmeshError):
         return "\n".join(lines)
 
 
+class LayoutChanged(InputError):
+    """The layout is not that of the mesh whose numbers are to stay; a new mesh could be made."""
+
+
 class MeshError(SkinmeshError):
     """The mesh kernel did something other than what it was asked."""
 

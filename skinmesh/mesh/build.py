@@ -53,8 +53,9 @@ def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progres
     Raises
     ------
     InputError
-        The layout does not fit on the skin, the mesh would be far too large, or the layout is not that of the mesh to
-        keep.
+        The layout does not fit on the skin, or the mesh would be far too large.
+    LayoutChanged
+        The layout is not that of the mesh to keep.
     MeshError
         The mesh kernel did something other than what it was asked.
     """

@@ -8,12 +8,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.definition.blade import BladeDefinition
-from skinmesh.errors import InputError, MeshError, Problem
+from skinmesh.errors import LayoutChanged, MeshError, Problem
 from skinmesh.mesh.plane import PlaneMesh, with_middles
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.skin.cover import StackTable
-from skinmesh.skin.kept import KeptLayout
+from skinmesh.skin.kept import WAYS_OUT, KeptLayout
 from skinmesh.skin.skinmap import SKIN, SkinMap
 
 Floats = NDArray[np.float64]
@@ -58,6 +58,8 @@ def kept_layout(old: ShellMesh) -> KeptLayout:
     on_base = is_corner & (old.sheet == SKIN) & (old.seam > n_seams - 1.0)
     at_rows = on_base & np.isin(old.row, rows)
     webs = tuple(region.name for region in old.regions if region.kind == "web")
+    in_base = np.array([region.kind == "base" for region in old.regions])[old.region]
+    base_rows = old.row[old.cells[in_base, : old.n_sides]]
     return KeptLayout(
         rows=tuple(label for label, _ in old.report.rows),
         seams=old.report.seams,
@@ -68,6 +70,7 @@ def kept_layout(old: ShellMesh) -> KeptLayout:
         n_heights=tuple(
             1 + len(np.unique(old.seam[is_corner & (old.sheet == sheet)])) for sheet in range(1, len(webs) + 1)
         ),
+        open_bands=tuple(np.unique(np.floor(base_rows.min(axis=1)).astype(int)).tolist()) if len(base_rows) else (),
     )
 
 
@@ -76,7 +79,7 @@ def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
 
     Raises
     ------
-    InputError
+    LayoutChanged
         Order, shape, hand or name differ.
     """
     shape = "quad" if old.n_sides == 4 else "triangle"
@@ -87,12 +90,12 @@ def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
     )
     file = blade.sources[0].file if blade.sources else blade.stem
     problems = [
-        Problem(file, 0, name, f"is now {now}, the mesh to keep has {before}; build without --keep")
+        Problem(file, 0, name, f"is now {now}; the mesh to keep has {before}. {WAYS_OUT}")
         for name, before, now in pairs
         if before != now
     ]
     if problems:
-        raise InputError(problems)
+        raise LayoutChanged(problems)
 
 
 def kept_elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:

@@ -11,6 +11,8 @@ from numpy.typing import NDArray
 
 Ints = NDArray[np.int64]
 
+WAYS_OUT = "Undo the change, build without --keep, or add --map: a new mesh, and a table from old numbers to new ones"
+
 
 @dataclass(frozen=True, eq=False)
 class KeptLayout:
@@ -28,6 +30,8 @@ class KeptLayout:
         Elements across the trailing base.
     n_heights : tuple of int
         Elements from foot to foot of each web.
+    open_bands : tuple of int
+        Rows after which there is a trailing base.
     """
 
     rows: tuple[str, ...]
@@ -37,6 +41,7 @@ class KeptLayout:
     n_gaps: Ints
     n_base: int
     n_heights: tuple[int, ...]
+    open_bands: tuple[int, ...]
 
 
 @dataclass
@@ -64,3 +69,54 @@ class LayoutComparison:
             self.changes.append(f"{kind} no longer there: {', '.join(gone)}")
         if new:
             self.changes.append(f"{kind} that were not there: {', '.join(new)}")
+
+
+@dataclass(frozen=True)
+class MatchedLines:
+    """Rows or seams of two meshes that are the same by name.
+
+    Attributes
+    ----------
+    pairs : tuple of (int, int)
+        Index before and now, both strictly increasing.
+    gone, new : tuple of str
+        Names that only the earlier one, and only the present one has.
+    """
+
+    pairs: tuple[tuple[int, int], ...]
+    gone: tuple[str, ...]
+    new: tuple[str, ...]
+
+
+def match_lines(before: Sequence[Sequence[str]], now: Sequence[Sequence[str]]) -> MatchedLines:
+    """Find the lines that two meshes share.
+
+    Parameters
+    ----------
+    before, now : sequence of sequences of str
+        The names of every line, in order. Where lines have changed places, stations and edges of regions stay pairs
+        rather than ends and feet of webs.
+
+    Returns
+    -------
+    MatchedLines
+
+    Examples
+    --------
+    >>> match_lines([["root"], ["web end"], ["tip"]], [["root"], ["step"], ["tip"]])
+    MatchedLines(pairs=((0, 0), (2, 2)), gone=('web end',), new=('step',))
+    """
+    places = [{name: i for i, names in enumerate(lines) for name in names} for lines in (before, now)]
+    shared = [name for name in places[0] if name in places[1]]
+    pairs: list[tuple[int, int]] = []
+    for name in sorted(shared, key=_rank):
+        i, j = places[0][name], places[1][name]
+        if all((i - a) * (j - b) > 0 for a, b in pairs):
+            pairs.append((i, j))
+    gone, new = (tuple(name for name in places[k] if name not in places[1 - k]) for k in (0, 1))
+    return MatchedLines(tuple(sorted(pairs)), gone, new)
+
+
+def _rank(name: str) -> int:
+    """Stations and edges of regions before ends and feet of webs, where both cannot hold."""
+    return int(name.endswith((" foot", " end", " apex")) or name.startswith("end of "))

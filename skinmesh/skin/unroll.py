@@ -9,9 +9,9 @@ from numpy.typing import NDArray
 
 from skinmesh.definition.blade import PRESSURE, SIDE_NAMES, SUCTION, BladeDefinition
 from skinmesh.definition.problems import FieldReport, Findings
-from skinmesh.errors import InputError, Problem
+from skinmesh.errors import InputError, LayoutChanged, Problem
 from skinmesh.skin.divisions import divide_gaps, divide_rows, least_across
-from skinmesh.skin.kept import KeptLayout, LayoutComparison
+from skinmesh.skin.kept import WAYS_OUT, KeptLayout, LayoutComparison
 from skinmesh.skin.plyspans import ply_ends
 from skinmesh.skin.rows import Rows, join_rows
 from skinmesh.skin.ruler import measure_sections
@@ -48,20 +48,22 @@ def unroll_skin(
     Raises
     ------
     InputError
-        The layout does not fit on the skin, the mesh would be far too large, or the layout is not the kept one.
+        The layout does not fit on the skin, or the mesh would be far too large.
+    LayoutChanged
+        The layout is not the kept one.
     """
     rule, file = blade.mesh, blade.sources[0].file if blade.sources else blade.stem
     report = FieldReport(file, blade.lines or {}, Findings())
     rows, spans, warnings = _find_rows(blade, surface)
+    bases = _bases(rows, spans)
     samples = np.union1d(rows.z, np.linspace(surface.z_ends[0], surface.z_ends[1], N_SPAN_SAMPLES))
     ruler = measure_sections(surface, samples)
     coarse, _ = place_seams(blade.layout, ruler, least_spacing=_spacing(blade, samples), report=report)
     if kept is not None:
-        _refuse_other_layout(blade, kept, rows, coarse, file)
+        _refuse_other_layout(blade, kept, rows, coarse, bases, file)
     gaps = divide_gaps(ruler, coarse, rule)
     if kept is not None:
         gaps = replace(gaps, n=kept.n_gaps)
-    bases = _bases(rows, spans)
     forced = {base.first_row - 1: 2 for base in bases if base.root_apex} | {
         base.last_row: 2 for base in bases if base.tip_apex
     }
@@ -95,14 +97,24 @@ def unroll_skin(
     return skin, (*warnings, *seam_warnings)
 
 
-def _refuse_other_layout(blade: BladeDefinition, kept: KeptLayout, rows: Rows, seams: SeamTable, file: str) -> None:
+def _refuse_other_layout(
+    blade: BladeDefinition, kept: KeptLayout, rows: Rows, seams: SeamTable, bases: tuple[BaseSpan, ...], file: str
+) -> None:
     comparison = LayoutComparison()
     comparison.compare("rows", kept.rows, rows.labels)
     comparison.compare("seams", kept.seams, seams.labels)
     comparison.compare("webs", kept.webs, [web.name for web in blade.layout.webs])
+    if not comparison.changes:
+        open_bands = {
+            band for base in bases for band in range(base.first_row - base.root_apex, base.last_row + base.tip_apex)
+        }
+        for band in sorted(open_bands ^ set(kept.open_bands)):
+            was, now = ("closed", "open") if band in open_bands else ("open", "closed")
+            place = f"between rows '{rows.labels[band]}' and '{rows.labels[band + 1]}'"
+            comparison.changes.append(f"the trailing edge {place} was {was} and is {now}")
     if comparison.changes:
         text = "the layout is not that of the mesh to keep: " + "; ".join(comparison.changes)
-        raise InputError([Problem(file, 0, "--keep", f"{text}. Build without --keep, or undo the change")])
+        raise LayoutChanged([Problem(file, 0, "--keep", f"{text}. {WAYS_OUT}")])
 
 
 def _spacing(blade: BladeDefinition, z: Floats) -> Floats | None:

@@ -1,0 +1,171 @@
+"""Parametric coordinates of one mesh in another one of the same blade, whose layout may be another."""
+
+from __future__ import annotations
+
+from collections import Counter
+
+import numpy as np
+from numpy.typing import NDArray
+
+from skinmesh.mesh.lattice import BASE, SKIN, Lattice
+from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.skin.kept import MatchedLines, match_lines
+
+Floats = NDArray[np.float64]
+
+_SAME_STATION = 1e-6  # of the blade's length
+
+
+class Crossing:
+    """Carries parametric coordinates from one lattice to another.
+
+    Rows and seams are matched by name: a web more or less shifts the integers, not the names. Stations are matched by
+    number where both blades have equally many, else by z, or by the share of the length. Between two matched lines that
+    are neighbours in both meshes the coordinates are those of before; where a line lies between them in one mesh only,
+    a place is carried by its share of the way along z, or along the arc.
+
+    Parameters
+    ----------
+    old, new : Lattice
+
+    Attributes
+    ----------
+    matched_rows, matched_seams : MatchedLines
+    """
+
+    def __init__(self, old: Lattice, new: Lattice) -> None:
+        self.old, self.new = old, new
+        self.matched_rows = rows = match_lines(*_row_names(old.mesh, new.mesh))
+        self.matched_seams = seams = match_lines(
+            *([_seam_names(label) for label in mesh.report.seams] for mesh in (old.mesh, new.mesh))
+        )
+        grids = old.skin_points(), new.skin_points()
+        self._row_table = _row_table(old, new, rows, [grid[..., 2].mean(axis=1) for grid in grids])
+        self._blocks = list(zip(seams.pairs[:-1], seams.pairs[1:], strict=True))
+        self._arcs = [
+            np.concatenate(
+                [np.zeros((len(grid), 1)), np.cumsum(np.linalg.norm(np.diff(grid, axis=1), axis=2), axis=1)], axis=1
+            )
+            for grid in grids
+        ]
+
+    @property
+    def names(self) -> list[str]:
+        """Charts of either mesh."""
+        return list(dict.fromkeys([*self.old.charts, *self.new.charts]))
+
+    def rows(self, row: Floats) -> Floats:
+        """Row coordinates in the new mesh."""
+        return np.asarray(np.interp(row, *self._row_table))
+
+    def rows_back(self, row: Floats) -> Floats:
+        """Row coordinates in the old mesh."""
+        return np.asarray(np.interp(row, *self._row_table[::-1]))
+
+    def seam_lines(self, name: str, row: Floats) -> Floats:
+        """(n, k) new seam coordinates of a chart's old lines at n old rows."""
+        lines = self.old.charts[name].seams
+        if name == BASE:
+            return np.tile(lines + (self.new.last_seam - self.old.last_seam), (len(row), 1))
+        if name != SKIN:
+            return np.tile(lines, (len(row), 1))
+        direct = np.interp(lines, *np.array([end for block in self._blocks for end in block], dtype=float).T)
+        table = np.tile(direct, (len(row), 1))
+        moved = [(a, b) for a, b in self._blocks if (b[0] - a[0], b[1] - a[1]) != (1, 1)]
+        if not moved:
+            return table
+        new_lines = self.new.charts[SKIN].seams
+        for k, (before, now) in enumerate(zip(row, self.rows(row), strict=True)):
+            arc, new_arc = (
+                _between(lattice.charts[SKIN].rows, arcs, at)
+                for lattice, arcs, at in zip((self.old, self.new), self._arcs, (before, now), strict=True)
+            )
+            for a, b in moved:
+                own = (lines >= a[0]) & (lines <= b[0])
+                ends, new_ends = np.interp((a[0], b[0]), lines, arc), np.interp((a[1], b[1]), new_lines, new_arc)
+                share = (arc[own] - ends[0]) / (ends[1] - ends[0])
+                table[k, own] = np.interp(new_ends[0] + share * (new_ends[1] - new_ends[0]), new_arc, new_lines)
+        return table
+
+    def seams(self, name: str, row: Floats, seam: Floats) -> Floats:
+        """New seam coordinates of old places of a chart."""
+        at, which = np.unique(row, return_inverse=True)
+        lines = self.old.charts[name].seams
+        index = np.interp(seam, lines, np.arange(len(lines)))
+        low = np.minimum(index.astype(int), len(lines) - 2)
+        table = self.seam_lines(name, at)
+        first, second = table[which, low], table[which, low + 1]
+        return np.asarray(first + (index - low) * (second - first))
+
+
+def _between(lines: Floats, values: Floats, at: float) -> Floats:
+    i = min(max(int(np.searchsorted(lines, at, side="right")) - 1, 0), len(lines) - 2)
+    u = (at - lines[i]) / (lines[i + 1] - lines[i])
+    return np.asarray((1.0 - u) * values[i] + u * values[i + 1])
+
+
+def _row_table(old: Lattice, new: Lattice, rows: MatchedLines, z: list[Floats]) -> tuple[Floats, Floats]:
+    """Old row coordinates, and the new ones of the same places, straight between."""
+    before, now = old.charts[SKIN].rows, new.charts[SKIN].rows
+    parts = []
+    for (a, c), (b, d) in zip(rows.pairs[:-1], rows.pairs[1:], strict=True):
+        if (b - a, d - c) == (1, 1):
+            parts.append(np.array([[a, b], [c, d]], dtype=float))
+            continue
+        share = [
+            (np.interp(lines[(lines >= low) & (lines <= high)], lines, along) - np.interp(low, lines, along))
+            / (np.interp(high, lines, along) - np.interp(low, lines, along))
+            for lines, along, low, high in ((before, z[0], a, b), (now, z[1], c, d))
+        ]
+        shares = np.union1d(*share)
+        parts.append(
+            np.array(
+                [
+                    np.interp(shares, own, lines[(lines >= low) & (lines <= high)])
+                    for own, lines, low, high in ((share[0], before, a, b), (share[1], now, c, d))
+                ]
+            )
+        )
+    table = np.concatenate(parts, axis=1)
+    return table[0], table[1]
+
+
+def _row_names(old: ShellMesh, new: ShellMesh) -> tuple[list[list[str]], list[list[str]]]:
+    """Names of all rows; a reason that stands twice gets a number, and stations names that both meshes share."""
+    names: tuple[list[list[str]], list[list[str]]] = ([], [])
+    pairs = dict(_same_stations(old.report.stations, new.report.stations))
+    shared = {f"station {j:02d}": f"station {i:02d}" for i, j in pairs.items()}
+    for own, mesh in zip(names, (old, new), strict=True):
+        seen: Counter[str] = Counter()
+        for label, _ in mesh.report.rows:
+            parts = []
+            for part in label.split(" + "):
+                seen[part] += 1
+                name = part if seen[part] == 1 else f"{part} ({seen[part]})"
+                if part.startswith("station ") and mesh is new:
+                    name = shared.get(part, f"{part}, new")
+                elif part.startswith("station ") and int(part.removeprefix("station ")) not in pairs:
+                    name = f"{part}, gone"
+                parts.append(name)
+            own.append(parts)
+    return names
+
+
+def _same_stations(old: Floats, new: Floats) -> list[tuple[int, int]]:
+    if len(old) == len(new):
+        return [(i, i) for i in range(len(old))]
+    pairs: dict[int, int] = {}
+    for before, now in ((old, new), (old / old[-1], new / new[-1])):
+        apart = np.abs(before[:, None] - now[None])
+        same = np.argwhere(apart <= _SAME_STATION * now[-1])
+        if len(same) > len(pairs):
+            pairs = {int(i): int(j) for i, j in same}
+    return sorted({**pairs, 0: 0, len(old) - 1: len(new) - 1}.items())
+
+
+def _seam_names(label: str) -> list[str]:
+    """'pressure cap edge + web foot' by its two names, each with its side."""
+    side, _, rest = label.partition(" ")
+    if side not in ("pressure", "suction"):
+        return [label]
+    return [f"{side} {part}" for part in rest.split(" + ")]
