@@ -121,6 +121,13 @@ class SolverRun:
     def mass(self) -> float:
         return float(self.block("total mass for set ALL")[0, 0])
 
+    @property
+    def frequencies(self) -> NDArray:
+        """Natural frequencies in Hz, of a frequency step."""
+        table = self.dat.split("E I G E N V A L U E   O U T P U T", 1)[1].split("P A R T I C I P A T I O N")[0]
+        rows = [line.split() for line in table.splitlines()]
+        return np.array([float(row[3]) for row in rows if len(row) == 5 and row[0].isdigit()])
+
     def displacements(self, name: str) -> NDArray:
         """(n, 4) node number and displacement."""
         return self.block(f"displacements (vx,vy,vz) for set {name}")
