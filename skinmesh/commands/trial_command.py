@@ -16,6 +16,7 @@ from skinmesh.errors import InputError, MissingExtra, OutputError, Problem
 from skinmesh.show.page import Page
 from skinmesh.show.trial_plot import trial_plot
 from skinmesh.trial.beamside import EXACT
+from skinmesh.trial.compare import ModeCase, StaticCase
 from skinmesh.trial.report import (
     LOOK,
     failures,
@@ -25,7 +26,7 @@ from skinmesh.trial.report import (
     solver_version,
     trial_json,
 )
-from skinmesh.trial.run import ModeCase, StaticCase, Trial, run_trial
+from skinmesh.trial.run import Trial, run_trial
 from skinmesh.trial.solver import SolverError, find_solver
 from skinmesh.write.placing import new_files
 
@@ -191,4 +192,4 @@ def _marked(case: StaticCase | ModeCase) -> Text:
     if isnan(case.difference):
         return Text("-")
     look = abs(case.difference) > LOOK
-    return Text(f"{case.difference:+.2%}{' !' if look else '  '}", style="yellow" if look else "")
+    return Text(f"{'! ' if look else ''}{case.difference:+.2%}", style="yellow" if look else "")

@@ -9,7 +9,8 @@ import numpy as np
 
 from skinmesh.show.page import MARGIN, WIDTH, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
-from skinmesh.trial.run import StaticCase, Trial
+from skinmesh.trial.compare import StaticCase
+from skinmesh.trial.run import Trial
 
 HEIGHT, TOP, GAP_ACROSS, GAP_DOWN = 1180, 130, 110, 95
 COLUMNS, ROWS = 3, 2

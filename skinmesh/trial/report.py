@@ -15,7 +15,8 @@ from skinmesh.laminate.stack import Stack
 from skinmesh.mesh.inner_face import node_normals
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.trial.beamside import ALL, COUPLED, MESH, SHEARED
-from skinmesh.trial.run import ModeCase, StaticCase, Trial
+from skinmesh.trial.compare import ModeCase, StaticCase
+from skinmesh.trial.run import Trial
 from skinmesh.version import __version__
 from skinmesh.write.deck_text import CAUTION
 
