@@ -16,18 +16,20 @@ from skinmesh.check.axes import check_axes
 from skinmesh.check.bulk_deck import check_bulk_deck
 from skinmesh.check.drops import check_drops
 from skinmesh.check.finding import FAIL, VERDICTS, WARN, Finding, not_made
+from skinmesh.check.inputs import check_inputs, find_blade
 from skinmesh.check.joints import check_joints, check_normals
 from skinmesh.check.keyword_deck import check_keyword_deck
-from skinmesh.check.limits import set_limits
+from skinmesh.check.limits import Limit, set_limits
 from skinmesh.check.msh_file import check_msh_file
 from skinmesh.check.overlap import check_overlap
 from skinmesh.check.plies import check_plies
 from skinmesh.check.reading import BuiltMesh, read_built_mesh
+from skinmesh.check.sections import check_sections
 from skinmesh.check.shape import check_density, check_fidelity, check_quality
 from skinmesh.check.solver import check_solver
 from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
-from skinmesh.check.totals import check_files, check_inputs, check_mass
+from skinmesh.check.totals import check_files, check_mass
 from skinmesh.check.webs import check_web_ends
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
@@ -114,6 +116,7 @@ def check_directory(
     mesh = built.mesh
     table = span_table(mesh)
     home = built.directory.resolve()
+    folders = [*input_folders, home, home.parent]
     stages: list[tuple[str, Callable[[], list[Finding]]]] = [
         ("joints", lambda: check_joints(mesh)),
         ("normals", lambda: check_normals(mesh)),
@@ -124,13 +127,14 @@ def check_directory(
         ("quality", lambda: check_quality(mesh, limits=chosen)),
         ("density", lambda: check_density(mesh, table, limits=chosen)),
         ("fidelity", lambda: check_fidelity(mesh, has_mid_nodes=built.has_mid_nodes, limits=chosen)),
+        ("sections", lambda: _check_sections(built, folders, chosen)),
         ("inner face", lambda: check_folding(mesh, has_mid_nodes=built.has_mid_nodes, limits=chosen)),
         ("radius", lambda: check_radius(mesh, limits=chosen)),
         ("overlap", lambda: check_overlap(mesh, limits=chosen)),
         ("solver", lambda: check_solver(mesh, limits=chosen)),
         ("totals", lambda: [*check_files(built), *check_mass(built)]),
         ("decks", lambda: _check_decks(built)),
-        ("inputs", lambda: check_inputs(built, folders=[*input_folders, home, home.parent])),
+        ("inputs", lambda: check_inputs(built, folders=folders)),
     ]
     findings: list[Finding] = []
     # An element that has collapsed divides by nothing; the check of its quality is there to say so.
@@ -140,6 +144,13 @@ def check_directory(
             findings += make()
     tell("done", 1.0)
     return CheckReport(built, tuple(findings))
+
+
+def _check_sections(built: BuiltMesh, folders: list[Path], limits: Mapping[str, Limit]) -> list[Finding]:
+    blade, reason = find_blade(built, folders=folders)
+    if blade is None:
+        return [not_made("fidelity", f"sections against station table and profiles: {reason}")]
+    return check_sections(built.mesh, blade, has_mid_nodes=built.has_mid_nodes, limits=limits)
 
 
 def _check_decks(built: BuiltMesh) -> list[Finding]:

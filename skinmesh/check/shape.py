@@ -161,7 +161,6 @@ def check_fidelity(mesh: ShellMesh, *, has_mid_nodes: bool, limits: Mapping[str,
         else not_made("fidelity", "edges against the surface: a first-order mesh has no mid nodes to tell"),
         _flat_areas(mesh, limits["area against flat pattern"]),
         _station_rings(mesh),
-        not_made("fidelity", "nodes against the profiles: the files do not carry the profiles"),
     ]
 
 

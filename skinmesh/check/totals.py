@@ -1,11 +1,6 @@
-"""Whether the files agree: counts, stacks, mass, and the inputs that they were made from."""
+"""Whether the files agree: counts, stacks and mass."""
 
 from __future__ import annotations
-
-import os
-from collections.abc import Iterable
-from hashlib import sha256
-from pathlib import Path
 
 import numpy as np
 
@@ -15,8 +10,6 @@ from skinmesh.mesh.measure import element_areas
 
 MASS = 1e-6
 SAME = 1e-8
-LARGEST_INPUT = 50_000_000
-DEPTH, MOST_FOLDERS = 2, 500
 
 
 def check_files(built: BuiltMesh) -> list[Finding]:
@@ -162,66 +155,3 @@ def check_mass(built: BuiltMesh) -> list[Finding]:
             )
         )
     return lines
-
-
-def check_inputs(built: BuiltMesh, *, folders: Iterable[Path]) -> list[Finding]:
-    """The input files, where they can be found, against the hashes of the summary.
-
-    Parameters
-    ----------
-    built : BuiltMesh
-    folders : iterable of Path
-        Where to look: in them, and down to two folders below.
-
-    Returns
-    -------
-    list of Finding
-    """
-    sources = built.mesh.sources
-    if not sources:
-        return [not_made("inputs", "the summary names no input files")]
-    places = list(dict.fromkeys(place for folder in folders for place in _with_subfolders(folder)))
-    same: list[str] = []
-    changed: list[str] = []
-    lost: list[str] = []
-    for source in sources:
-        # The build names a file from the blade file's folder; whoever looks may stand elsewhere.
-        names = dict.fromkeys([source.file, Path(source.file).name])
-        found = [place / name for place in places for name in names if (place / name).is_file()]
-        found = [path for path in found if path.stat().st_size <= LARGEST_INPUT]
-        if any(sha256(path.read_bytes()).hexdigest() == source.sha256 for path in found):
-            same.append(source.file)
-        else:
-            (changed if found else lost).append(source.file)
-    measured = f"{len(same)} of {len(sources)} input files as they were, {len(changed)} changed, {len(lost)} not found"
-    if not same and not changed:
-        return [not_made("inputs", f"{measured} ({listed(lost)}); name their folder with --inputs")]
-    where = "; ".join(
-        f"{word}: {listed(names)}" for word, names in (("changed", changed), ("not found", lost)) if names
-    )
-    return [
-        Finding(
-            "inputs",
-            measured,
-            "warn 1 changed",
-            "SHA-256 of every input in the summary",
-            verdict_of(fails=False, warns=changed),
-            where,
-        )
-    ]
-
-
-def _with_subfolders(folder: Path) -> list[Path]:
-    """A folder and those down to two below it, without hidden ones."""
-    found = [folder] if folder.is_dir() else []
-    newest = found
-    for _ in range(DEPTH):
-        newest = [child for parent in newest for child in _children(parent)]
-        found = [*found, *newest][:MOST_FOLDERS]
-    return found
-
-
-def _children(folder: Path) -> list[Path]:
-    if not os.access(folder, os.R_OK | os.X_OK):
-        return []
-    return sorted(path for path in folder.iterdir() if path.is_dir() and not path.name.startswith("."))
