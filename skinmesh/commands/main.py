@@ -23,6 +23,7 @@ from skinmesh.commands.beam_command import beam
 from skinmesh.commands.build_command import build
 from skinmesh.commands.check_command import check
 from skinmesh.commands.closing import printable
+from skinmesh.commands.diff_command import diff
 from skinmesh.commands.page_command import page
 from skinmesh.commands.starter import write_starter
 from skinmesh.commands.trial_command import trial
@@ -81,7 +82,7 @@ def schema() -> None:
     click.echo(json.dumps(json_schema(), indent=2, ensure_ascii=False))
 
 
-for _command in (build, beam, check, trial, page):
+for _command in (build, beam, check, trial, page, diff):
     cli.add_command(_command)
 
 

@@ -10,15 +10,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.beam.table import BeamTable, beam_difference
-from skinmesh.show.page import MARGIN, WIDTH, Page
-from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
+from skinmesh.show.page import MARGIN, Page
+from skinmesh.show.palette import AXIS_COLOURS, QUIET
+from skinmesh.show.panel import CAUTION, HEIGHT, panel
 
 Floats = NDArray[np.float64]
 
-HEIGHT, TOP, GAP_ACROSS, GAP_DOWN = 1180, 130, 110, 95
-COLUMNS, ROWS = 3, 2
 COLOURS = (*AXIS_COLOURS[:2], "#009e73")
-CAUTION = "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes."
 
 
 def beam_plot(table: BeamTable, path: Path) -> None:
@@ -80,21 +78,10 @@ def _curves(
     page: Page, place: int, z: Floats, title: str, curves: Mapping[str, tuple[Floats, ...]], *, is_log: bool = False
 ) -> Any:
     """One panel: a line and dots for each pair of values."""
-    width = (WIDTH - 2 * MARGIN - (COLUMNS - 1) * GAP_ACROSS - 50) / COLUMNS
-    height = (HEIGHT - TOP - 90 - (ROWS - 1) * GAP_DOWN) / ROWS
-    row, column = divmod(place, COLUMNS)
-    left, top = MARGIN + 50 + column * (width + GAP_ACROSS), TOP + row * (height + GAP_DOWN)
-    axes = page.axes(left, top, width, height, extent=(float(z[0]), float(z[-1]), 0.0, 1.0))
-    axes.set_axis_on()
-    axes.set_ylim(auto=True)
-    axes.set_yscale("log" if is_log else "linear")
+    axes = panel(page, place, title, (float(z[0]), float(z[-1])), is_log=is_log)
     for colour, (label, (exact, mesh)) in zip(COLOURS, curves.items(), strict=False):
         axes.plot(z, exact, color=colour, linewidth=1.4, label=label)
         axes.plot(z, mesh, ".", color=colour, markersize=3.5)
-    axes.set_title(title, loc="left", fontsize=12, color=INK)
-    axes.set_xlabel("z, m", fontsize=10, color=INK)
-    axes.grid(color="#e4e4e4", linewidth=0.6)
-    axes.spines[["top", "right"]].set_visible(False)
     if len(curves) > 1:
         axes.legend(frameon=False, fontsize=10)
     return axes

@@ -3,18 +3,15 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 
-from skinmesh.show.page import MARGIN, WIDTH, Page
+from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
+from skinmesh.show.panel import CAUTION, HEIGHT, panel
 from skinmesh.trial.compare import StaticCase
 from skinmesh.trial.run import Trial
 
-HEIGHT, TOP, GAP_ACROSS, GAP_DOWN = 1180, 130, 110, 95
-COLUMNS, ROWS = 3, 2
-CAUTION = "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes."
 _SOLVER, _THEORY = AXIS_COLOURS[:2]
 _UNITS = {0: (1.0, "deflection along x, m"), 1: (1.0, "deflection along y, m"), 5: (180.0 / np.pi, "twist, °")}
 
@@ -54,7 +51,7 @@ def trial_plot(trial: Trial, path: Path) -> None:
 def _line(page: Page, place: int, trial: Trial, case: StaticCase) -> None:
     factor, unit = _UNITS[case.component]
     z = trial.rings.z
-    axes = _panel(page, place, f"{case.name}: {unit}", (float(z[0]), float(z[-1])))
+    axes = panel(page, place, f"{case.name}: {unit}", (float(z[0]), float(z[-1])))
     axes.plot(z, factor * case.line_theory[:, case.component], color=_THEORY, linewidth=1.4, label="theory")
     axes.plot(
         z,
@@ -69,7 +66,7 @@ def _line(page: Page, place: int, trial: Trial, case: StaticCase) -> None:
 
 def _frequencies(page: Page, place: int, trial: Trial) -> None:
     n = len(trial.modes)
-    axes = _panel(page, place, "natural frequencies, Hz", (0.4, n + 0.6))
+    axes = panel(page, place, "natural frequencies, Hz", (0.4, n + 0.6))
     number = np.arange(1, n + 1)
     theory = np.array([mode.theory for mode in trial.modes])
     solver = np.array([mode.solver for mode in trial.modes])
@@ -82,23 +79,8 @@ def _frequencies(page: Page, place: int, trial: Trial) -> None:
 
 def _distortion(page: Page, place: int, trial: Trial) -> None:
     z = trial.rings.z
-    axes = _panel(page, place, "warping, ovalisation: % of the largest motion", (float(z[0]), float(z[-1])))
+    axes = panel(page, place, "warping, ovalisation: % of the largest motion", (float(z[0]), float(z[-1])))
     for case, style in zip(trial.statics, ("-", "--", ":", "-."), strict=False):
         axes.plot(z, 100.0 * np.hypot(case.ovalisation, case.warping), style, color=INK, linewidth=1.2, label=case.name)
     axes.set_ylim(bottom=0.0)
     axes.legend(frameon=False, fontsize=10)
-
-
-def _panel(page: Page, place: int, title: str, span: tuple[float, float]) -> Any:
-    width = (WIDTH - 2 * MARGIN - (COLUMNS - 1) * GAP_ACROSS - 50) / COLUMNS
-    height = (HEIGHT - TOP - 90 - (ROWS - 1) * GAP_DOWN) / ROWS
-    row, column = divmod(place, COLUMNS)
-    left, top = MARGIN + 50 + column * (width + GAP_ACROSS), TOP + row * (height + GAP_DOWN)
-    axes = page.axes(left, top, width, height, extent=(*span, 0.0, 1.0))
-    axes.set_axis_on()
-    axes.set_ylim(auto=True)
-    axes.set_title(title, loc="left", fontsize=12, color=INK)
-    axes.set_xlabel("z, m", fontsize=10, color=INK)
-    axes.grid(color="#e4e4e4", linewidth=0.6)
-    axes.spines[["top", "right"]].set_visible(False)
-    return axes
