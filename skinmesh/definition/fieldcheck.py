@@ -4,13 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from copy import deepcopy
-from typing import Any, get_args
+from typing import Any, TypeVar, get_args
 
 from pydantic import BaseModel, ValidationError
 
 from skinmesh.definition.problems import FieldPath, FieldReport, known_names, nearest, number_hint, shown
 from skinmesh.definition.schema import NOT_YET, BladeFields
 from skinmesh.definition.yamltree import Document
+
+Model = TypeVar("Model", bound=BaseModel)
 
 _MISSING_EXAMPLES = {
     "planform": "the file name of the station table, such as 'planform: stations.csv'",
@@ -43,19 +45,42 @@ def check_fields(document: Document, report: FieldReport) -> BladeFields:
     data = deepcopy(document.data)
     _refuse_what_comes_later(data, report)
     _take_naca_as_written(data, document)
+    return check_against(BladeFields, data, report, examples=_MISSING_EXAMPLES)
+
+
+def check_against(
+    model: type[Model], data: dict[str, Any], report: FieldReport, *, examples: Mapping[str, str]
+) -> Model:
+    """Check the fields of a file against a model whose fields may all be None.
+
+    Parameters
+    ----------
+    model : pydantic model
+    data : dict
+        Refused values are taken out of it.
+    report : FieldReport
+        Takes the mistakes.
+    examples : mapping of str to str
+        What to give in place of a missing field, by its name.
+
+    Returns
+    -------
+    Model
+        With None in the place of every refused value.
+    """
     try:
-        return BladeFields.model_validate(data)
+        return model.model_validate(data)
     except ValidationError as error:
         faults = error.errors(include_url=False)
-    meant = {_meant_field(tuple(fault["loc"])) for fault in faults if fault["type"] == "extra_forbidden"}
+    meant = {_meant_field(model, tuple(fault["loc"])) for fault in faults if fault["type"] == "extra_forbidden"}
     for fault in faults:
         # a misspelt field is told once, not also as missing
         if fault["type"] != "missing" or tuple(fault["loc"]) not in meant:
-            _tell(fault, report)
+            _tell(model, fault, report, examples)
     # extra fields first: taking them out moves nothing that another fault points at
     for fault in sorted(faults, key=lambda fault: fault["type"] != "extra_forbidden"):
-        _take_out(fault["type"], tuple(fault["loc"]), data)
-    return BladeFields.model_validate(data)
+        _take_out(model, fault["type"], tuple(fault["loc"]), data)
+    return model.model_validate(data)
 
 
 def _refuse_what_comes_later(data: dict[str, Any], report: FieldReport) -> None:
@@ -74,20 +99,20 @@ def _take_naca_as_written(data: dict[str, Any], document: Document) -> None:
             profile["naca"] = document.written[f"profiles.{name}.naca"]
 
 
-def _tell(fault: Mapping[str, Any], report: FieldReport) -> None:
+def _tell(model: type[BaseModel], fault: Mapping[str, Any], report: FieldReport, examples: Mapping[str, str]) -> None:
     path: FieldPath = tuple(fault["loc"])
     if fault["type"] == "missing":
-        what = _MISSING_EXAMPLES.get(str(path[-1]))
+        what = examples.get(str(path[-1]))
         report.add(path, f"is missing or has no value{f'; give {what}' if what else ''}")
     elif fault["type"] == "extra_forbidden":
-        report.add(path, _unknown_field(path, _model_at(path[:-1])))
+        report.add(path, _unknown_field(path, _model_at(model, path[:-1])))
     else:
         report.add(path, _fault_text(fault))
 
 
-def _meant_field(path: FieldPath) -> FieldPath | None:
+def _meant_field(model: type[BaseModel], path: FieldPath) -> FieldPath | None:
     """Path of the field that an unknown one is most like."""
-    near = nearest(str(path[-1]), _field_names(_model_at(path[:-1])))
+    near = nearest(str(path[-1]), _field_names(_model_at(model, path[:-1])))
     return (*path[:-1], near) if near else None
 
 
@@ -105,9 +130,9 @@ def _unknown_field(path: FieldPath, model: type[BaseModel] | None) -> str:
     return f"there is no such field; {known_names(known)}{hint}"
 
 
-def _model_at(path: FieldPath) -> type[BaseModel] | None:
-    """The model that a path of the blade file leads to."""
-    model: Any = BladeFields
+def _model_at(top: type[BaseModel], path: FieldPath) -> type[BaseModel] | None:
+    """The model that a path of a file leads to."""
+    model: Any = top
     for part in path:
         if isinstance(model, type) and issubclass(model, BaseModel):
             fields: dict[str | int, Any] = {field.alias or name: field for name, field in model.model_fields.items()}
@@ -185,7 +210,7 @@ def _fault_text(fault: Mapping[str, Any]) -> str:
     return text(fault["input"], fault.get("ctx", {})) if text else f"{fault['msg']}, got {shown(fault['input'])}"
 
 
-def _take_out(fault_type: str, path: FieldPath, data: dict[str, Any]) -> None:
+def _take_out(model: type[BaseModel], fault_type: str, path: FieldPath, data: dict[str, Any]) -> None:
     """Put None, or an empty part, where a value was refused, so that the rest can be looked at."""
     *way, last = path
     parent: Any = data
@@ -193,10 +218,10 @@ def _take_out(fault_type: str, path: FieldPath, data: dict[str, Any]) -> None:
         parent = parent.get(part) if isinstance(parent, dict) else parent[part]
         if parent is None:
             return  # taken out before, with what held it
-    part_model = _model_at(path)
+    part_model = _model_at(model, path)
     if fault_type == "extra_forbidden":
         parent.pop(last, None)
-    elif _model_at(tuple(way)) is not None:
+    elif _model_at(model, tuple(way)) is not None:
         parent[last] = None
     elif part_model is not None:
         parent[last] = {
@@ -205,4 +230,4 @@ def _take_out(fault_type: str, path: FieldPath, data: dict[str, Any]) -> None:
     elif isinstance(parent, dict):
         parent.pop(last, None)
     else:
-        _take_out(fault_type, tuple(way), data)
+        _take_out(model, fault_type, tuple(way), data)

@@ -102,7 +102,7 @@ class Document:
     written: Mapping[str, str]
 
 
-def read_document(source: InputText, findings: Findings) -> Document | None:
+def read_document(source: InputText, findings: Findings, *, kind: str = "blade file") -> Document | None:
     """Read a YAML file by the core schema of YAML 1.2.
 
     ``1e-3``, ``41e9`` and ``0o17`` are numbers; ``no``, ``on`` and ``1_000`` are words. A repeated key, a tag outside
@@ -112,6 +112,8 @@ def read_document(source: InputText, findings: Findings) -> Document | None:
     ----------
     source : InputText
     findings : Findings
+    kind : str
+        What the file is, in the user's words.
 
     Returns
     -------
@@ -133,7 +135,7 @@ def read_document(source: InputText, findings: Findings) -> Document | None:
         return None
     if not isinstance(root, MappingNode):
         line = root.start_mark.line + 1 if root else 0
-        findings.add(source.file, "the blade file must be a group of fields, such as 'title: my blade'", line=line)
+        findings.add(source.file, f"the {kind} must be a group of fields, such as 'title: my blade'", line=line)
         return None
     build = _Build(FieldReport(source.file, {}, findings))
     try:
