@@ -216,9 +216,9 @@ def test_the_same_mesh_makes_the_same_bytes(tmp_path: Path) -> None:
 
 
 def test_an_unknown_subject_names_the_known_ones(tmp_path: Path) -> None:
-    with pytest.raises(ValueError, match="no subject 'plies'; known: region, stack, thickness, e1"):
+    with pytest.raises(ValueError, match="no subject 'plies'; known: region, stack, thickness, e1, cut, developed"):
         picture(tube(8, 2), tmp_path / "x.png", by="plies")
-    assert set(PAINTS) == set(SUBJECTS)
+    assert set(PAINTS) | {"cut", "developed"} == set(SUBJECTS)
 
 
 @pytest.mark.skipif(sys.platform != "linux", reason="VTK draws through EGL on Linux")

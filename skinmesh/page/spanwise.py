@@ -1,4 +1,4 @@
-"""Numbers along the span, measured on the mesh: planform, twist, thickness, mass and stiffness."""
+"""Numbers along the span as the page has them: planform, twist, thickness, mass and stiffness."""
 
 from __future__ import annotations
 
@@ -8,21 +8,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from skinmesh.beam.meshcut import element_row_middles, mesh_sections
-from skinmesh.definition.blade import COUNTER_CLOCKWISE
+from skinmesh.mesh.planform import planform
 from skinmesh.mesh.shellmesh import ShellMesh
-from skinmesh.show.develop import NOSE
 
 Floats = NDArray[np.float64]
 
 MOST_SECTIONS = 400
 
 
-def shape_along(mesh: ShellMesh) -> dict[str, Any]:
+def shape_along(mesh: ShellMesh) -> dict[str, list[float | None]]:
     """Leading and trailing edge, chord, twist and thickness of every node ring that has both edges.
-
-    The chord runs from the node on the leading edge to the middle of the trailing edge's nodes; the thickness is the
-    section's extent across it. A profile that keeps its own axes may have its foremost node some tenths of a degree off
-    them, and so does the twist from that of the table.
 
     Parameters
     ----------
@@ -30,32 +25,13 @@ def shape_along(mesh: ShellMesh) -> dict[str, Any]:
 
     Returns
     -------
-    dict
-        Lists by name, m and degrees; empty where the mesh has no leading edge.
+    dict of str to list
+        Lists by name, m and degrees, as ``skinmesh.mesh.planform`` measures them.
     """
-    seams = mesh.report.seams
-    names = ("z", "leading", "trailing", "chord", "twist", "thickness")
-    if NOSE not in seams:
-        return {name: [] for name in names}
-    skin = np.flatnonzero(mesh.sheet[: mesh.n_corners] == 0)
-    order = skin[np.lexsort((mesh.seam[skin], np.round(mesh.row[skin], 9)))]
-    rows = np.round(mesh.row[order], 9)
-    start = np.flatnonzero(np.r_[True, rows[1:] != rows[:-1]])
-    measured = []
-    for nodes in np.split(order, start[1:]):
-        place, points = mesh.seam[nodes], mesh.points[nodes]
-        nose = points[place == seams.index(NOSE)]
-        tail = points[(place == 0) | (place == len(seams) - 1)]
-        if not len(nose) or not len(tail):
-            continue
-        line = (tail.mean(axis=0) - nose[0])[:2]
-        chord = float(np.hypot(*line))
-        across = (points[:, :2] - nose[0, :2]) @ np.array([-line[1], line[0]]) / max(chord, 1e-30)
-        hand = -1.0 if mesh.hand == COUNTER_CLOCKWISE else 1.0
-        twist = np.degrees(np.arctan2(line[0], hand * line[1]))
-        measured.append((nose[0, 2], nose[0, 1], tail[:, 1].mean(), chord, twist, np.ptp(across)))
-    table = np.array(measured).reshape(-1, len(names))
-    return {name: _plain(column) for name, column in zip(names, table.T, strict=True)}
+    shape = planform(mesh)
+    columns = {name: getattr(shape, name) for name in ("z", "leading", "trailing", "chord", "thickness")}
+    columns["twist"] = np.degrees(shape.twist)
+    return {name: _plain(column) for name, column in columns.items()}
 
 
 def beam_along(mesh: ShellMesh) -> dict[str, Any]:

@@ -51,9 +51,31 @@ def cut_at(mesh: ShellMesh, z: float) -> tuple[Floats, Ints]:
         (x, y) of both ends of the line through each element that is cut.
     element : (k,) int array
     """
-    corners = mesh.points[mesh.cells[:, : mesh.n_sides]]
-    # A hair beside z, so that no corner lies on the plane.
-    height = corners[:, :, 2] - (z + 1e-9 * np.ptp(mesh.points[:, 2]))
+    lines, element, _ = cut_sides_at(mesh, z)
+    return lines, element
+
+
+def cut_sides_at(mesh: ShellMesh, z: float) -> tuple[Floats, Ints, Ints]:
+    """Cut the mesh as ``cut_at`` does, and tell which element sides the plane crosses.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+    z : float, m
+
+    Returns
+    -------
+    lines : (k, 2, 2) float array, m
+    element : (k,) int array
+    sides : (k, 2, 2) int array
+        Node indices of the side that each end of a line lies on, the smaller one first.
+    """
+    nodes = mesh.cells[:, : mesh.n_sides]
+    corners = mesh.points[nodes]
+    # A hair beside z, so that no corner lies on the plane, and inside the mesh at its two ends.
+    span = float(np.ptp(mesh.points[:, 2]))
+    root = float(mesh.points[:, 2].min())
+    height = corners[:, :, 2] - (min(max(z, root), root + span * (1.0 - 2e-9)) + 1e-9 * span)
     following = np.roll(height, -1, axis=1)
     crossing = (height > 0) != (following > 0)
     element = np.flatnonzero(crossing.sum(axis=1) == 2)
@@ -61,4 +83,6 @@ def cut_at(mesh: ShellMesh, z: float) -> tuple[Floats, Ints]:
     row = element[row]
     share = height[row, side] / (height[row, side] - following[row, side])
     start, end = corners[row, side, :2], np.roll(corners, -1, axis=1)[row, side, :2]
-    return (start + share[:, None] * (end - start)).reshape(-1, 2, 2), element
+    lines = (start + share[:, None] * (end - start)).reshape(-1, 2, 2)
+    sides = np.sort(np.column_stack([nodes[row, side], np.roll(nodes, -1, axis=1)[row, side]]), axis=1)
+    return lines, element, sides.reshape(-1, 2, 2)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -19,6 +19,20 @@ MARGIN = 50
 DPI = 100
 POINT = 72.0 / DPI
 """Points a pixel."""
+
+
+def round_ticks(low: float, high: float, *, most: int = 14) -> Floats:
+    """Round numbers from low to high, evenly spaced and at most so many.
+
+    >>> round_ticks(0.0, 24.0).tolist()
+    [0.0, 2.0, 4.0, 6.0, 8.0, 10.0, 12.0, 14.0, 16.0, 18.0, 20.0, 22.0, 24.0]
+    >>> round_ticks(-0.3, 0.9, most=4).tolist()
+    [0.0, 0.5]
+    """
+    size = 10.0 ** np.floor(np.log10((high - low) / most))
+    step = next(factor * size for factor in (1.0, 2.0, 5.0, 10.0) if (high - low) / (factor * size) <= most)
+    first, last = np.ceil(low / step - 1e-9), np.floor(high / step + 1e-9)
+    return np.asarray(np.round(np.arange(first, last + 1) * step, 12) + 0.0)
 
 
 class Page:
@@ -81,6 +95,13 @@ class Page:
             Rectangle(corner, width / WIDTH, height / self.height, facecolor=colour, edgecolor=QUIET, linewidth=0.4)
         )
 
+    def stroke(self, points: Sequence[tuple[float, float]], *, colour: str) -> None:
+        """A thin line through places."""
+        from matplotlib.lines import Line2D
+
+        x, y = np.array(points).T
+        self.figure.add_artist(Line2D(x / WIDTH, 1.0 - y / self.height, color=colour, linewidth=0.6))
+
     def swatches(self, left: float, top: float, names: Mapping[str, Any]) -> float:
         """Boxes of colour, each with its name to the right, in as many lines as they need.
 
@@ -89,6 +110,13 @@ class Page:
         float
             y of the last line's middle.
         """
+        return self._legend(left, top, names, height=18)
+
+    def lines(self, left: float, top: float, names: Mapping[str, Any]) -> float:
+        """As ``swatches``, with lines of colour instead of boxes."""
+        return self._legend(left, top, names, height=5)
+
+    def _legend(self, left: float, top: float, names: Mapping[str, Any], *, height: float) -> float:
         x = left
         y = top
         for name, colour in names.items():
@@ -97,7 +125,7 @@ class Page:
             if x + width > WIDTH - MARGIN + 30 and x > left:
                 x, y = left, y + 30
                 label.set_position(((x + 32) / WIDTH, 1.0 - y / self.height))
-            self.box(x, y - 9, 24, 18, colour=colour)
+            self.box(x, y - height / 2, 24, height, colour=colour)
             x += width
         return y
 

@@ -1,8 +1,8 @@
-"""Pictures of a built mesh: both sides of the whole blade, a cut-open part of it, and sections."""
+"""Pictures of a built mesh: both sides of the whole blade, a cut-open part, sections; cuts; the developed skin."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -12,8 +12,10 @@ from numpy.typing import NDArray
 
 from skinmesh.definition.blade import CLOCKWISE
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.show.cuts import draw_cuts
+from skinmesh.show.developed import draw_developed
 from skinmesh.show.outline import border_edges, cut_at
-from skinmesh.show.page import MARGIN, WIDTH, Page
+from skinmesh.show.page import MARGIN, WIDTH, Page, round_ticks
 from skinmesh.show.paint import PAINTS, Paint
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
 from skinmesh.show.render import Camera, Frame, frame_of, quiet_plotter, render, shaded
@@ -21,8 +23,17 @@ from skinmesh.show.render import Camera, Frame, frame_of, quiet_plotter, render,
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
-SUBJECTS: Mapping[str, str] = {"region": "regions", "stack": "stacks", "thickness": "thickness", "e1": "e1"}
+SUBJECTS: Mapping[str, str] = {
+    "region": "regions",
+    "stack": "stacks",
+    "thickness": "thickness",
+    "e1": "e1",
+    "cut": "cuts",
+    "developed": "developed",
+}
 """What a picture can show, and the word for it in a file's name: ``stem.regions.png``."""
+
+_WHOLE_PAGES: Mapping[str, Callable[[ShellMesh, Path], None]] = {"cut": draw_cuts, "developed": draw_developed}
 
 SUCTION_VIEW = Camera((1.0, 0.0, 0.0))
 PRESSURE_VIEW = Camera((-1.0, 0.0, 0.0))
@@ -68,7 +79,7 @@ def picture(mesh: ShellMesh, path: Path, *, by: str = "region") -> None:
     mesh : ShellMesh
     path : Path
     by : str
-        'region', 'stack', 'thickness' or 'e1'.
+        'region', 'stack', 'thickness', 'e1', 'cut' or 'developed'.
 
     Raises
     ------
@@ -77,8 +88,11 @@ def picture(mesh: ShellMesh, path: Path, *, by: str = "region") -> None:
     ValueError
         There is no such subject.
     """
-    if by not in PAINTS:
-        raise ValueError(f"by: no subject '{by}'; known: {', '.join(PAINTS)}")
+    if by not in SUBJECTS:
+        raise ValueError(f"by: no subject '{by}'; known: {', '.join(SUBJECTS)}")
+    if by in _WHOLE_PAGES:
+        _WHOLE_PAGES[by](mesh, path)
+        return
     paint = PAINTS[by](mesh)
     scene = _scene(mesh, paint)
     whole = [frame_of(scene.points, camera) for camera in (SUCTION_VIEW, PRESSURE_VIEW)]
@@ -205,7 +219,7 @@ def _view(
 def _span_scale(page: Page, frame: Frame, *, top: float, scale: float) -> None:
     """A scale of z under the views."""
     axes = page.axes(MARGIN, top + 14, frame.width * scale, 8, extent=(frame.left, frame.left + frame.width, 0.0, 1.0))
-    levels = _round_ticks(frame.left, frame.left + frame.width)
+    levels = round_ticks(frame.left, frame.left + frame.width)
     axes.hlines(1.0, frame.left, frame.left + frame.width, color=QUIET, linewidth=0.8, clip_on=False)
     axes.vlines(levels, 0.0, 1.0, color=QUIET, linewidth=0.8, clip_on=False)
     for k, level in enumerate(levels):
@@ -213,13 +227,6 @@ def _span_scale(page: Page, frame: Frame, *, top: float, scale: float) -> None:
         page.text(
             MARGIN + (level - frame.left) * scale, top + 36, words, size=15, colour=QUIET, ha="center" if k else "left"
         )
-
-
-def _round_ticks(low: float, high: float) -> Floats:
-    size = 10.0 ** np.floor(np.log10((high - low) / 4.0))
-    step = next(factor * size for factor in (1.0, 2.0, 5.0, 10.0) if (high - low) / (factor * size) <= 14)
-    first, last = np.ceil(low / step - 1e-9), np.floor(high / step + 1e-9)
-    return np.asarray(np.round(np.arange(first, last + 1) * step, 12) + 0.0)
 
 
 def _cut_open(page: Page, scene: _Scene, top: float) -> None:
