@@ -11,7 +11,8 @@ from rich.console import Console, RenderableType
 from rich.text import Text
 
 from skinmesh.commands.closing import CAUTION, grouped, print_parts, printable
-from skinmesh.commands.diff_tables import along, causes, detail_tables, numbers, shown, verdict
+from skinmesh.commands.diff_tables import along, causes, detail_tables, numbers
+from skinmesh.commands.diff_words import effect, readable, verdict
 from skinmesh.commands.stages import shown_stages
 from skinmesh.compare.report import diff_json
 from skinmesh.compare.run import MeshDifference, compare_directories
@@ -84,7 +85,7 @@ def diff(
     ]
     print_parts(
         console,
-        Text(shown(f"{difference.new.mesh.title}: {sides[0]} to {sides[1]}"), style="bold"),
+        Text(readable(f"{difference.new.mesh.title}: {sides[0]} to {sides[1]}"), style="bold"),
         verdict(difference),
         *(() if difference.is_equal else _parts(difference, radians(turn), is_all=is_all)),
         *(Text(printable(str(name))) for name in written),
@@ -99,6 +100,7 @@ def _parts(difference: MeshDifference, turn: float, *, is_all: bool) -> tuple[Re
         return (causes(difference, turn),)
     spans = along(difference)
     return (
+        effect(difference),
         causes(difference, turn),
         numbers(difference),
         *(() if spans is None else (spans,)),

@@ -1,8 +1,8 @@
-"""A comparison in words and tables, the most telling first."""
+"""A comparison in tables, old beside new."""
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from math import degrees
 
 import numpy as np
@@ -10,19 +10,11 @@ from rich.console import RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from skinmesh.check.finding import listed
-from skinmesh.commands.closing import NARROW_SPACE, grouped, printable, significant
-from skinmesh.compare.elements import BY_NUMBER as ONE_BY_ONE
+from skinmesh.commands.closing import grouped
+from skinmesh.commands.diff_words import NOTABLE, WIDER, cause_lines, is_notable, percent, readable, shows
 from skinmesh.compare.run import MeshDifference
-from skinmesh.compare.stations import ColumnChange, is_one
-from skinmesh.compare.surface import BY_NUMBER, BY_PLACE, Move
-from skinmesh.compare.values import CHANGED, GONE, NEW, Entry, Value
-from skinmesh.definition.blade import SIDE_NAMES
+from skinmesh.compare.values import CHANGED, NEW, Entry, Value
 
-NOTABLE = 5e-4
-"""Share of a value from which on its change is worth a line of a table."""
-WIDER = 5e-3
-"""The same for widths along the span, which are means over parts of it."""
 MOST_LINES = 12
 _HEADS = (
     "mass",
@@ -41,65 +33,15 @@ _HEADS = (
 _ALWAYS = ("mass", "static moment z", "elements")
 
 
-def shown(text: str) -> str:
-    """Text without control characters, counts with their thousands apart."""
-    return NARROW_SPACE.join(printable(part) for part in text.split(NARROW_SPACE))
-
-
-def verdict(difference: MeshDifference) -> Text:
-    """The first line: whether anything changed, and whether numbers stay valid."""
-    if difference.is_equal:
-        return Text("Equal in everything but dates and versions.", style="bold green")
-    if difference.is_same_mesh and not difference.files:
-        return Text(f"The meshes are the same to the last bit; {_beside(difference)}.", style="bold")
-    if difference.is_same_mesh:
-        files = ", ".join(f".{ending}" for ending in difference.files)
-        return Text(f"The meshes are the same, but files made from them are not: {files}.", style="bold red")
-    return Text(shown(difference.numbering.sentence), style="bold" if difference.numbering.is_kept else "bold yellow")
-
-
-def _beside(difference: MeshDifference) -> str:
-    names = [entry.name for entry in difference.inputs]
-    return shown(f"input files of another text: {listed(names)}" if names else "what the summaries say beside is not")
-
-
 def causes(difference: MeshDifference, turn: float) -> Table:
     """What changed, a line or two for each kind."""
     table = Table.grid(padding=(0, 2, 0, 0))
     table.add_column(no_wrap=True)
     table.add_column(overflow="fold")
-    for name, lines in (
-        ("title", _titles(difference)),
-        ("stations", _stations(difference)),
-        ("mesh settings", [_setting(value) for value in difference.settings if value.name != "title"]),
-        ("regions", _regions(difference)),
-        ("plies", _plies(difference)),
-        ("materials", _materials(difference.materials)),
-        ("stacks", _stack_lines(difference)),
-        ("surface", _surface(difference)),
-        ("axes", [_turned(difference, turn)]),
-        ("warnings", _warnings(difference)),
-        ("inputs", _inputs(difference)),
-    ):
+    for name, lines in cause_lines(difference, turn):
         for k, line in enumerate(lines):
-            table.add_row(Text(name if k == 0 else ""), Text(shown(line)))
+            table.add_row(Text(name if k == 0 else ""), Text(readable(line)))
     return table
-
-
-def _turned(difference: MeshDifference, turn: float) -> str:
-    """How many elements turned, in one sentence."""
-    parts = []
-    for name, angle in (("0° direction", difference.elements.turned), ("normal", difference.elements.tilted)):
-        n = int(np.count_nonzero(angle > turn))
-        if angle.max(initial=0.0) > 0.0:
-            parts.append(
-                f"{name} of {grouped(n) if n else 'no'} element{'s' if n != 1 else ''} by more than"
-                f" {degrees(turn):.3g}°, {degrees(float(angle.max())):.2f}° at most"
-            )
-    if not parts:
-        return "no element turned"
-    way = "" if difference.elements.pairs.way == ONE_BY_ONE else ", against the closest point of the old surface"
-    return "; ".join(parts) + way
 
 
 def numbers(difference: MeshDifference) -> Table:
@@ -112,21 +54,12 @@ def numbers(difference: MeshDifference) -> Table:
         value = found.get(name)
         if value is None or value.old is None or value.new is None:
             continue
-        if name in _ALWAYS or _shows(value):
+        if name in _ALWAYS or shows(value):
             label = "static moment at the root" if name == "static moment z" else name
             label = label.replace("inertia xx about the origin", "inertia xx at the root")
             label = label.replace("inertia zz about the origin", "inertia zz at the root")
             table.add_row(Text(f"{label} {value.unit}".rstrip()), *_columns(value))
     return table
-
-
-def _shows(value: Value) -> bool:
-    """Whether a change can be seen in five digits."""
-    if value.is_equal or isinstance(value.old, str) or isinstance(value.new, str):
-        return False
-    size = max(abs(float(value.old or 0.0)), abs(float(value.new or 0.0)))
-    floor = 1e-4 if value.name.startswith("centre") else 1e-5 * size
-    return abs(value.difference or 0.0) > floor
 
 
 def along(difference: MeshDifference) -> Table | None:
@@ -141,13 +74,13 @@ def along(difference: MeshDifference) -> Table | None:
         size = max(abs(found.old), abs(found.new))
         least = WIDER if name.startswith("width") else NOTABLE
         if abs(found.difference) > least * size and (name != "twist" or abs(value.difference or 0.0) > 0.01):
-            table.add_row(Text(shown(f"{name} {unit}")), f"{found.z:.3f}", *_columns(value))
+            table.add_row(Text(readable(f"{name} {unit}")), f"{found.z:.3f}", *_columns(value))
     return table if table.row_count else None
 
 
 def entries_table(head: str, entries: Sequence[Entry], names: Sequence[str]) -> Table | None:
     """Things that came, went or changed, with some of their values; None where nothing notable did."""
-    shown = [entry for entry in entries if entry.state != CHANGED or any(_is_notable(entry, name) for name in names)]
+    shown = [entry for entry in entries if entry.state != CHANGED or any(is_notable(entry, name) for name in names)]
     if not shown:
         return None
     table = _table(head)
@@ -157,7 +90,7 @@ def entries_table(head: str, entries: Sequence[Entry], names: Sequence[str]) -> 
         table.add_column(f"{name} {units.get(name, '')}".rstrip(), justify="right", no_wrap=True)
     for entry in shown[:MOST_LINES]:
         table.add_row(
-            Text(shown(entry.name)),
+            Text(readable(entry.name)),
             "" if entry.state == CHANGED else entry.state,
             *(_cell(entry, name) for name in names),
         )
@@ -178,238 +111,25 @@ def detail_tables(difference: MeshDifference) -> list[RenderableType]:
     return [table for table in tables if table is not None]
 
 
-def _titles(difference: MeshDifference) -> list[str]:
-    titles = [built.mesh.title for built in (difference.old, difference.new)]
-    return [] if titles[0] == titles[1] else [f"{titles[0]}, now {titles[1]}"]
-
-
-def _stations(difference: MeshDifference) -> list[str]:
-    stations = difference.stations
-    if not stations.is_known:
-        return ["not in the files, which an earlier version wrote: look at the planform along the span"]
-    lines = []
-    for state in (GONE, NEW):
-        names = [entry.name for entry in stations.entries if entry.state == state]
-        if names:
-            lines.append(f"{len(names)} {state}: {listed(names, most=6)}")
-    return lines + [_column_words(column) for column in stations.columns]
-
-
-def _column_words(column: ColumnChange) -> str:
-    words = ""
-    if column.words:
-        words = column.words
-    elif column.share is not None and column.unit == "m":
-        words = _ranged([f"{100 * share:+.3g}" for share in column.share], is_one(column.share), " %")
-        if column.difference is not None:
-            words += f" ({_ranged([f'{d:+.4g}' for d in column.difference], is_one(column.difference), ' m')})"
-    elif column.difference is not None:
-        unit = column.unit if column.unit in ("", "°") else f" {column.unit}"
-        words = _ranged([f"{d:+.4g}" for d in column.difference], is_one(column.difference), unit)
-    else:
-        words = "given or left out"
-    where = f"z = {column.z[0]:g} m" if column.z[0] == column.z[1] else f"z = {column.z[0]:g} to {column.z[1]:g} m"
-    return f"{column.name} {words} at {column.stations} of {column.of} stations, {where}"
-
-
-def _ranged(values: Sequence[str], is_single: bool, unit: str) -> str:
-    return f"{values[0]}{unit}" if is_single or values[0] == values[1] else f"{values[0]} to {values[1]}{unit}"
-
-
-def _setting(value: Value) -> str:
-    return f"{value.name}: {_shown(value.old)}, now {_shown(value.new)}"
-
-
-def _shown(value: float | int | str | None) -> str:
-    return "none" if value is None else f"{value:.6g}" if isinstance(value, float) else str(value)
-
-
-def _regions(difference: MeshDifference) -> list[str]:
-    lines = []
-    for state in (GONE, NEW):
-        own = [entry for entry in difference.regions if entry.state == state]
-        for entry in own:
-            side = "old" if state == GONE else "new"
-            area, low, high = (getattr(entry.value(name), side) for name in ("area", "from z", "to z"))
-            span = "" if low is None else f", z = {low:.3f} to {high:.3f} m"
-            lines.append(f"{state}: {entry.name}, {significant(float(area))} m²{span}")
-    moved = []
-    for entry in difference.regions:
-        low, high = entry.value("from z"), entry.value("to z")
-        if (
-            entry.state == CHANGED
-            and not (low.is_equal and high.is_equal)
-            and low.old is not None
-            and low.new is not None
-        ):
-            moved.append(f"{entry.name}: z = {low.old:.3f} to {high.old:.3f} m, now {low.new:.3f} to {high.new:.3f} m")
-    length = [float(built.mesh.points[:, 2].max()) for built in (difference.old, difference.new)]
-    if abs(length[1] - length[0]) > 1e-9:
-        lines.append(f"blade length {length[0]:.3f} m, now {length[1]:.3f} m")
-    if len(moved) <= 4:
-        lines += moved
-    wider = _widths(difference)
-    return lines + ([listed(wider, most=4)] if wider else [])
-
-
-def _widths(difference: MeshDifference) -> list[str]:
-    """Caps, strips and webs, not the panels between them, whose width changed."""
-    kinds = {region.name: region.kind for region in difference.new.mesh.regions}
-    found = []
-    for name, change in difference.largest.items():
-        region = name.removeprefix("width of ")
-        if kinds.get(region) not in ("cap", "strip", "web") or not min(abs(change.old), abs(change.new)) > 0.0:
-            continue
-        if abs(change.difference) > WIDER * max(change.old, change.new):
-            word = "height" if kinds[region] == "web" else "width"
-            found.append(
-                f"{word} of {region} {1e3 * change.old:.0f} to {1e3 * change.new:.0f} mm at z = {change.z:.2f} m"
-            )
-    return found
-
-
-def _plies(difference: MeshDifference) -> list[str]:
-    """What of each ply is another, its area and mass apart, which follow from the regions."""
-    lines = []
-    for entry in difference.plies:
-        if entry.state != CHANGED:
-            mass = entry.value("mass")
-            lines.append(f"{entry.state}: {entry.name}, {significant(float(mass.new or mass.old or 0.0))} kg")
-            continue
-        own = [
-            value
-            for value in entry.values
-            if value.name not in ("layers' area", "mass")
-            and _is_notable(entry, value.name)
-            and not _is_row(difference, value)
-        ]
-        words = [f"{value.name} {_shown(value.old)}, now {_shown(value.new)} {value.unit}".rstrip() for value in own]
-        if words:
-            heavier = entry.value("mass").difference or 0.0
-            lines.append(f"{entry.name}: {'; '.join(words)}; {heavier:+.4g} kg")
-    return lines[:8] + ([f"and {len(lines) - 8} more"] if len(lines) > 8 else [])
-
-
-def _is_row(difference: MeshDifference, value: Value) -> bool:
-    """Whether an end of a ply moved with its row of elements, and not to another row."""
-    if value.difference is None or value.unit != "m":
-        return False
-    length = float(np.diff(difference.along[1].ends).max(initial=0.0))
-    return abs(value.difference) < 0.5 * length
-
-
-def _materials(entries: Iterable[Entry]) -> list[str]:
-    lines = []
-    for entry in entries:
-        if entry.state != CHANGED:
-            lines.append(f"{entry.state}: {entry.name}")
-            continue
-        own = [value for value in entry.values if not value.is_equal and value.name != "mass"]
-        if own:
-            words = (
-                f"{value.name} {_shown(value.old)}, now {_shown(value.new)} {value.unit}".rstrip() for value in own
-            )
-            lines.append(f"{entry.name}: {'; '.join(words)}")
-    return lines
-
-
-def _stack_lines(difference: MeshDifference) -> list[str]:
-    elements = difference.elements
-    n = int(np.count_nonzero(elements.stack_changed))
-    total = len(elements.pairs.new)
-    if not n:
-        return ["the same plies on every element"] if total else []
-    way = "" if elements.pairs.way == ONE_BY_ONE else f" ({elements.pairs.way})"
-    lines = [f"other plies on {grouped(n)} of {grouped(total)} elements{way}"]
-    for change in elements.stacks[:4]:
-        thick = f", {1e3 * change.largest_thickness:+.3g} mm" if change.largest_thickness else ""
-        lines.append(
-            f"{change.what}: {grouped(change.elements)} element{'s' if change.elements != 1 else ''},"
-            f" {significant(change.area)} m², {change.mass:+.4g} kg{thick}, "
-            f"z = {change.z[0]:.2f} to {change.z[1]:.2f} m, {listed(_parts(change.regions), most=3)}"
-        )
-    rest = elements.stacks[4:]
-    if rest:
-        area = sum(change.area for change in rest)
-        lines.append(f"and {len(rest)} other changes on {significant(area)} m²")
-    return lines
-
-
-def _parts(regions: Sequence[str]) -> list[str]:
-    """Names of regions, those of both sides once."""
-    sides = tuple(f"{side} " for side in SIDE_NAMES.values())
-    parts = [next((name.removeprefix(side) for side in sides if name.startswith(side)), name) for name in regions]
-    return list(
-        dict.fromkeys(part if parts.count(part) > 1 else name for name, part in zip(regions, parts, strict=True))
-    )
-
-
-def _surface(difference: MeshDifference) -> list[str]:
-    nodes, shape = difference.surface.nodes, difference.surface.shape
-    lines = []
-    if nodes is not None and nodes.largest == 0.0:
-        return ["no node moved"]
-    if nodes is not None and nodes.way == BY_NUMBER:
-        lines.append(f"nodes moved {_moved(nodes)}")
-    elif nodes is not None and nodes.way == BY_PLACE:
-        lines.append(f"places of equal row and seam moved {_moved(nodes)}")
-    height = difference.surface.height
-    out, into = float(height.max(initial=0.0)), float(-height.min(initial=0.0))
-    words = (
-        f"skin as a shape moved {_moved(shape)}; along its normal {_mm(max(out, 0.0))} out, {_mm(max(into, 0.0))} in"
-    )
-    if nodes is None or nodes.way != BY_NUMBER:
-        words += " (with what the coarser mesh cannot resolve)"
-    return [*lines, words]
-
-
-def _moved(move: Move) -> str:
-    at = f" ({move.where})" if move.where else ""
-    return f"{_mm(move.largest)} at most{at}, {_mm(move.rms)} rms"
-
-
-def _mm(length: float) -> str:
-    return f"{1e3 * length:.3g} mm"
-
-
-def _warnings(difference: MeshDifference) -> list[str]:
-    known = {text.partition(":")[0] for text in difference.warnings_gone}
-    now = {text.partition(":")[0] for text in difference.warnings_new}
-    lines = [
-        f"{'other elements' if text.partition(':')[0] in known else 'new'}: {text}" for text in difference.warnings_new
-    ]
-    lines += [f"gone: {text}" for text in difference.warnings_gone if text.partition(":")[0] not in now]
-    return [_cut(line) for line in lines[:4]] + ([f"and {len(lines) - 4} more"] if len(lines) > 4 else [])
-
-
-def _cut(text: str) -> str:
-    return text if len(text) <= 120 else f"{text[:119]}…"
-
-
-def _inputs(difference: MeshDifference) -> list[str]:
-    names = [f"{entry.name}{'' if entry.state == CHANGED else f' ({entry.state})'}" for entry in difference.inputs]
-    return [f"of another text: {listed(names)}"] if names else []
-
-
 def _table(head: str) -> Table:
     table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
-    table.add_column(Text(shown(head)))
+    table.add_column(Text(readable(head)))
     return table
 
 
 def _columns(value: Value) -> tuple[str, str, str, str]:
     """Old, new, change and share, as text."""
     old, new = float(value.old or 0.0), float(value.new or 0.0)
-    if not _shows(value):
+    if not shows(value):
         value = Value(value.name, value.unit, value.old, value.old)
         new = old
     if isinstance(value.old, int) and isinstance(value.new, int):
         change = value.new - value.old
-        return grouped(value.old), grouped(value.new), f"{change:+d}" if change else "", _percent(value)
+        return grouped(value.old), grouped(value.new), f"{change:+d}" if change else "", percent(value)
     digits = _digits(max(abs(old), abs(new)))
     change_digits = min(digits + 2, 6)
     shown = f"{new - old:+.{change_digits}f}" if old != new else ""
-    return f"{old:.{digits}f}", f"{new:.{digits}f}", shown, _percent(value)
+    return f"{old:.{digits}f}", f"{new:.{digits}f}", shown, percent(value)
 
 
 def _digits(size: float) -> int:
@@ -417,26 +137,12 @@ def _digits(size: float) -> int:
     return int(np.clip(4 - np.floor(np.log10(size)), 0, 4)) if size > 0.0 else 1
 
 
-def _percent(value: Value) -> str:
-    if value.is_equal or value.share is None or value.name.startswith(("centre", "twist")):
-        return ""
-    return f"{100 * value.share:+.2f} %"
-
-
-def _is_notable(entry: Entry, name: str) -> bool:
-    """Whether a value changed by more than rounding in one of its five digits."""
-    found = {value.name: value for value in entry.values}.get(name)
-    if found is None or found.is_equal:
-        return False
-    return found.share is None or abs(found.share) > NOTABLE
-
-
 def _cell(entry: Entry, name: str) -> str:
     """A value, or both where it changed."""
     found = {value.name: value for value in entry.values}.get(name)
     if found is None:
         return ""
-    if found.is_equal or (entry.state == CHANGED and not _is_notable(entry, name)):
+    if found.is_equal or (entry.state == CHANGED and not is_notable(entry, name)):
         return _short(found.new)
     if entry.state != CHANGED:
         return _short(found.new if entry.state == NEW else found.old)
@@ -446,4 +152,4 @@ def _cell(entry: Entry, name: str) -> str:
 def _short(value: float | int | str | None) -> str:
     if value is None:
         return "–"
-    return shown(value) if isinstance(value, str) else f"{value:.5g}"
+    return readable(value) if isinstance(value, str) else f"{value:.5g}"

@@ -15,7 +15,7 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
 _STEPS = 8
-_SLIGHTLY = 1e-12
+_SLIGHTLY = 1e-9
 _BLOCK = 1 << 15
 """Points worked on at once, so that a million of them need no gigabytes."""
 
@@ -112,45 +112,61 @@ def _sample_weights(mesh: ShellMesh) -> Floats:
 
 def _feet(mesh: ShellMesh, candidates: Ints, points: Floats) -> Feet:
     n, most = candidates.shape
-    first_of = np.arange(n)
     best = np.full(n, np.inf)
     element, normal, height = candidates[:, 0].copy(), np.zeros((n, 3)), np.zeros(n)
+    # a foot inside the first element is the closest one; others may lie on the elements beside it
+    is_open = np.ones(n, dtype=bool)
     for column in range(most):
-        fresh = np.flatnonzero((candidates[:, column] != candidates[:, 0]) | (column == 0))
-        distance, across, signed = _on_elements(mesh, candidates[fresh, column], points[fresh])
-        better = distance < best[fresh]
-        chosen = first_of[fresh][better]
+        own = np.flatnonzero(is_open & ((candidates[:, column] != candidates[:, 0]) | (column == 0)))
+        distance, across, along, inside = _on_elements(mesh, candidates[own, column], points[own])
+        better = distance < best[own]
+        chosen = own[better]
         best[chosen], element[chosen] = distance[better], candidates[chosen, column]
-        normal[chosen], height[chosen] = across[better], signed[better]
+        normal[chosen], height[chosen] = across[better], along[better]
+        is_open[own[inside]] = False
     return Feet(best, height, element, normal)
 
 
-def _on_elements(mesh: ShellMesh, element: Ints, points: Floats) -> tuple[Floats, Floats, Floats]:
-    """Distance to one element each, the unit normal at the closest point, and what of the distance lies along it."""
+def _on_elements(mesh: ShellMesh, element: Ints, points: Floats) -> tuple[Floats, Floats, Floats, NDArray[np.bool_]]:
+    """Distance to one element each, the unit normal at the foot, what of the distance lies along it, foot inside."""
     nodes = mesh.points[mesh.cells[element]]
     is_quad = mesh.n_sides == 4
     place = np.full((len(element), 2), 0.0 if is_quad else 1.0 / 3.0)
+    moving = np.arange(len(element))
     for _ in range(_STEPS):
-        gap, first, second = _gap(nodes, place, points)
-        a, b, c = (np.einsum("pd,pd->p", u, v) for u, v in ((first, first), (first, second), (second, second)))
-        right = [np.einsum("pd,pd->p", vector, gap) for vector in (first, second)]
-        bottom = np.maximum(a * c - b * b, 1e-300)
-        step = np.column_stack([c * right[0] - b * right[1], a * right[1] - b * right[0]]) / bottom[:, None]
-        moved = _inside(place + step, is_quad=is_quad)
-        if is_quad:
-            # where one coordinate is held at a side, the other one slides along it
-            held = np.abs(moved) >= 1.0
-            slide = np.column_stack([right[0] / np.maximum(a, 1e-300), right[1] / np.maximum(c, 1e-300)])
-            on_side = np.abs(place) >= 1.0
-            alone = held[:, ::-1] & on_side[:, ::-1] & ~held
-            moved = np.where(alone, np.clip(place + slide, -1.0, 1.0), moved)
-        if np.abs(moved - place).max(initial=0.0) < _SLIGHTLY:
+        before = place[moving]
+        after = _step(nodes[moving], before, points[moving], is_quad=is_quad)
+        place[moving] = after
+        moving = moving[np.abs(after - before).max(axis=1) > _SLIGHTLY]
+        if not len(moving):
             break
-        place = moved
     gap, first, second = _gap(nodes, place, points)
     normal = np.cross(first, second)
     normal /= np.maximum(np.linalg.norm(normal, axis=1), 1e-300)[:, None]
-    return np.linalg.norm(gap, axis=1), normal, np.einsum("pd,pd->p", gap, normal)
+    along = np.einsum("pd,pd->p", gap, normal)
+    if is_quad:
+        inside = np.abs(place).max(axis=1, initial=0.0) < 1.0
+    else:
+        inside = (place.min(axis=1, initial=1.0) > 0.0) & (place.sum(axis=1) < 1.0)
+    return np.linalg.norm(gap, axis=1), normal, along, inside
+
+
+def _step(nodes: Floats, place: Floats, points: Floats, *, is_quad: bool) -> Floats:
+    """One projected Gauss–Newton step towards the foot."""
+    gap, first, second = _gap(nodes, place, points)
+    a, b, c = (np.einsum("pd,pd->p", u, v) for u, v in ((first, first), (first, second), (second, second)))
+    right = [np.einsum("pd,pd->p", vector, gap) for vector in (first, second)]
+    bottom = np.maximum(a * c - b * b, 1e-300)
+    step = np.column_stack([c * right[0] - b * right[1], a * right[1] - b * right[0]]) / bottom[:, None]
+    moved = _inside(place + step, is_quad=is_quad)
+    if not is_quad:
+        return moved
+    # where one coordinate is held at a side, the other one slides along it
+    held = np.abs(moved) >= 1.0
+    slide = np.column_stack([right[0] / np.maximum(a, 1e-300), right[1] / np.maximum(c, 1e-300)])
+    on_side = np.abs(place) >= 1.0
+    alone = held[:, ::-1] & on_side[:, ::-1] & ~held
+    return np.where(alone, np.clip(place + slide, -1.0, 1.0), moved)
 
 
 def _gap(nodes: Floats, place: Floats, points: Floats) -> tuple[Floats, Floats, Floats]:

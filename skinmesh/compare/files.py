@@ -13,7 +13,7 @@ from skinmesh.errors import InputError, Problem
 from skinmesh.write.formats.vtu import VtuContent
 
 _COMMENTS: Mapping[str, bytes] = {"inp": b"**", "bdf": b"$"}
-_WHOLE = ("stacks.csv", "msh")
+_WHOLE = ("msh",)
 
 
 def same_summary(old: Mapping[str, Any], new: Mapping[str, Any]) -> bool:
@@ -32,6 +32,11 @@ def same_vtu(old: VtuContent, new: VtuContent) -> bool:
     )
 
 
+def same_stacks(old: BuiltMesh, new: BuiltMesh) -> bool:
+    """Whether the tables of stacks are the same."""
+    return _same(*(built.file("stacks.csv") for built in (old, new)), comment=None)
+
+
 def differing_files(old: BuiltMesh, new: BuiltMesh) -> tuple[str, ...]:
     """Endings of files that both folders have and that differ in more than comments.
 
@@ -42,7 +47,7 @@ def differing_files(old: BuiltMesh, new: BuiltMesh) -> tuple[str, ...]:
     Returns
     -------
     tuple of str
-        The summary and the VTU are not looked at here.
+        Of the decks and of MSH.
 
     Raises
     ------

@@ -10,6 +10,9 @@ from skinmesh.laminate.stack import Layer
 
 LAYERS, THICKNESS, ANGLE, MATERIAL, ORDER = "layers", "thickness", "angle", "material", "order"
 
+_MOST = 4
+"""Changes of one stack that are told."""
+
 
 @dataclass(frozen=True)
 class LayerChange:
@@ -96,7 +99,9 @@ def change_words(groups: Sequence[Sequence[LayerChange]]) -> str:
     >>> change_words([[LayerChange("core", "thickness", "8", "10")]])
     'core: 8 to 10 mm'
     """
-    return "; ".join(_words([group[k] for group in groups]) for k in range(len(groups[0])))
+    words = [_words([group[k] for group in groups]) for k in range(len(groups[0]))]
+    more = len(words) - _MOST
+    return "; ".join(words) if more <= 0 else "; ".join([*words[:_MOST], f"and {more} more"])
 
 
 def _words(changes: Sequence[LayerChange]) -> str:

@@ -11,7 +11,7 @@ import numpy as np
 from skinmesh.check.reading import BuiltMesh, read_built_mesh
 from skinmesh.compare.along import Along, LargestChange, largest_change, measured_along
 from skinmesh.compare.elements import ElementChange, compare_elements
-from skinmesh.compare.files import differing_files, files_in_one, same_summary, same_vtu
+from skinmesh.compare.files import differing_files, files_in_one, same_stacks, same_summary, same_vtu
 from skinmesh.compare.numbering import Numbering, compare_numbering
 from skinmesh.compare.parts import (
     input_entries,
@@ -62,7 +62,7 @@ class MeshDifference:
         Along the span: chord, twist, thickness of the sections, mass per length, and the width of every region that
         both have (a web's height), in m, rad and kg/m; mass and widths are means over 60 parts of the span.
     files : tuple of str
-        Endings of decks, MSH and tables that differ.
+        Endings of decks and of MSH that differ although the mesh is the same.
     files_in_one : tuple of str
         Endings of formats that only one folder has; these make no difference.
     """
@@ -143,8 +143,8 @@ def compare_meshes(old: BuiltMesh, new: BuiltMesh, *, progress: Progress | None 
         old.mesh, new.mesh, has_same_elements=numbering.has_same_elements, has_same_layout=has_same_layout
     )
     tell("tables", 0.8)
-    files = differing_files(old, new)
-    is_same_mesh = same_vtu(old.vtu, new.vtu) and "stacks.csv" not in files
+    is_same_mesh = same_vtu(old.vtu, new.vtu) and same_stacks(old, new)
+    files = differing_files(old, new) if is_same_mesh else ()
     warnings = [mesh.report.warnings for mesh in (old.mesh, new.mesh)]
     difference = MeshDifference(
         old=old,

@@ -105,9 +105,26 @@ def compare_surfaces(old: ShellMesh, new: ShellMesh, *, has_same_places: bool, h
         still = new.node_number[corners]
         moved = nodes.distance[np.searchsorted(nodes.node, still)] > 0.0
     if len(skin[0]) and moved.any():
-        feet = closest_points(old, new.points[corners[moved]], elements=skin[0])
-        distance[moved], height[moved] = feet.distance, feet.height
+        distance[moved], height[moved] = _to_skin(old, new, corners[moved], skin)
     return SurfaceChange(nodes, _move(new, BY_DISTANCE, corners, distance), height)
+
+
+def _to_skin(old: ShellMesh, new: ShellMesh, nodes: Ints, skin: list[Ints]) -> tuple[Floats, Floats]:
+    """Distance of nodes to the old skin, and what of it lies along the normal."""
+    points = new.points[nodes]
+    feet = closest_points(old, points, elements=skin[0])
+    distance, height = feet.distance.copy(), feet.height.copy()
+    side = np.zeros(len(new.points), dtype=np.int64)
+    side[new.cells[skin[1], : new.n_sides]] = new.side[skin[1], None]
+    # on a thin blade the search may have ended on the other side: look once more on the own one
+    for own in (1, -1):
+        doubtful = np.flatnonzero((side[nodes] == own) & (old.side[feet.element] == -own))
+        there = np.flatnonzero(old.side == own)
+        if len(doubtful) and len(there):
+            again = closest_points(old, points[doubtful], elements=there)
+            nearer = again.distance < distance[doubtful]
+            distance[doubtful[nearer]], height[doubtful[nearer]] = again.distance[nearer], again.height[nearer]
+    return distance, height
 
 
 def _by_number(old: ShellMesh, new: ShellMesh) -> Move:
