@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import csv
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from itertools import pairwise
 
@@ -106,14 +106,11 @@ def read_table(source: InputText, findings: Findings) -> ReadTable | None:
         None where there is no header to go by.
     """
     before = set(findings.problems)
-    lines = [(number, _without_comment(line)) for number, line in enumerate(source.lines, start=1)]
-    lines = [(number, line) for number, line in lines if line.strip(' \t,;"')]
-    if not lines:
+    rows, separator = split_rows(source.lines)
+    if not rows:
         findings.add(source.file, "holds nothing but comments; a station table was expected")
         return None
-    header_line, header_text = lines[0]
-    separator = next((mark for mark in ";\t" if mark in header_text), ",")
-    rows = [(number, _cells(line, separator)) for number, line in lines]
+    header_line = rows[0][0]
     header = _read_header(source.file, header_line, rows[0][1], findings)
     if header is None:
         return None
@@ -132,6 +129,31 @@ def read_table(source: InputText, findings: Findings) -> ReadTable | None:
         _check_length(table, findings)
     _check_stations(table, findings)
     return replace(table, is_sound=before == set(findings.problems))
+
+
+def split_rows(lines: Sequence[str]) -> tuple[list[tuple[int, list[str]]], str]:
+    """Split the lines of a table into cells, without comments and blank rows.
+
+    Parameters
+    ----------
+    lines : sequence of str
+
+    Returns
+    -------
+    list of (int, list of str)
+        One-based line and cells of every row, the header first.
+    str
+        The separator.
+
+    Examples
+    --------
+    >>> split_rows(["# a table", "z_m; chord_m", "", "0.0; 1.2  # root"])
+    ([(2, ['z_m', 'chord_m']), (4, ['0.0', '1.2'])], ';')
+    """
+    bare = [(number, _without_comment(line)) for number, line in enumerate(lines, start=1)]
+    bare = [(number, line) for number, line in bare if line.strip(' \t,;"')]
+    separator = next((mark for mark in ";\t" if bare and mark in bare[0][1]), ",")
+    return [(number, _cells(line, separator)) for number, line in bare], separator
 
 
 def _without_comment(line: str) -> str:
