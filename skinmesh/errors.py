@@ -65,7 +65,18 @@ class InputError(SkinmeshError):
 
 
 class LayoutChanged(InputError):
-    """The layout is not that of the mesh whose numbers are to stay; a new mesh could be made."""
+    """The layout is not that of the mesh whose numbers are to stay; a new mesh could be made.
+
+    Parameters
+    ----------
+    problems : iterable of Problem
+    changes : iterable of str
+        What changed, in short.
+    """
+
+    def __init__(self, problems: Iterable[Problem], *, changes: Iterable[str]) -> None:
+        super().__init__(problems)
+        self.changes = tuple(changes)
 
 
 class MeshError(SkinmeshError):

@@ -19,7 +19,7 @@ from skinmesh.definition.blade import Source
 from skinmesh.errors import InputError, Problem
 from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Layer, Stack
-from skinmesh.mesh.shellmesh import BuildReport, Region, ShellMesh
+from skinmesh.mesh.shellmesh import BuildReport, MeshOrigin, Region, ShellMesh
 from skinmesh.write.formats.vtu import VtuContent, read_vtu
 
 Floats = NDArray[np.float64]
@@ -284,13 +284,19 @@ def _assemble(
         element_sets={},
         node_number=values["node"].astype(np.int64),
         element_number=vtu.cell_arrays["element"].astype(np.int64),
-        sources=tuple(Source(str(s["file"]), str(s["sha256"])) for s in summary["inputs"]),
+        sources=_sources(summary),
         report=_report(summary),
     )
 
 
+def _sources(entry: Mapping[str, Any]) -> tuple[Source, ...]:
+    return tuple(Source(str(s["file"]), str(s["sha256"])) for s in entry["inputs"])
+
+
 def _report(summary: Mapping[str, Any]) -> BuildReport:
+    origin = summary.get("divisions_kept_from")
     return BuildReport(
+        divided_by=None if origin is None else MeshOrigin(str(origin["title"]), _sources(origin)),
         warnings=tuple(str(text) for text in summary["warnings"]),
         ply_end_move=float(summary["largest_ply_end_move_m"]),
         ply_end_place=str(summary["largest_ply_end_move_at"]),

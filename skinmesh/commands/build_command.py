@@ -2,10 +2,7 @@
 
 from __future__ import annotations
 
-import json
-from dataclasses import replace
 from difflib import get_close_matches
-from functools import partial
 from math import isfinite
 from pathlib import Path
 from time import perf_counter
@@ -13,19 +10,15 @@ from time import perf_counter
 import click
 from rich.console import Console
 
-import skinmesh
 from skinmesh.check.reading import read_built_mesh
 from skinmesh.commands.closing import print_closing, print_timings, printable
-from skinmesh.commands.keeping import print_kept
+from skinmesh.commands.keeping import print_kept, print_map
+from skinmesh.commands.rebuild import BuildOrder, build_files
 from skinmesh.commands.stages import shown_stages
-from skinmesh.definition.spanwise import constant
-from skinmesh.errors import OutputError
-from skinmesh.show.picture import SUBJECTS, picture, require_pictures
+from skinmesh.commands.watching import watch
+from skinmesh.show.picture import require_pictures
 from skinmesh.write.files import DEFAULT_FORMATS
 from skinmesh.write.registry import FORMATS
-
-# Where the parts of a build begin on its progress bar.
-_BUILD, _FILES = 0.05, 0.5
 
 
 def _length(_ctx: click.Context, _parameter: click.Parameter, value: float | None) -> float | None:
@@ -78,6 +71,14 @@ def _format_names(_ctx: click.Context, _parameter: click.Parameter, value: str) 
     type=click.Path(path_type=Path),
     help="Folder of an earlier build of the same layout, whose node and element numbers, sets and connectivity stay.",
 )
+@click.option(
+    "--map",
+    "with_map",
+    is_flag=True,
+    help="With --keep: where the layout changed, make a new mesh instead of refusing; in either case write tables that"
+    " carry the old nodes and elements to the new ones.",
+)
+@click.option("--watch", "is_watched", is_flag=True, help="Build again whenever an input file is saved, until Ctrl-C.")
 @click.option("--pictures", is_flag=True, help="Also draw regions, stacks, thickness and e1 (PNG).")
 @click.option("--timings", is_flag=True, help="Also print time and peak memory of each stage.")
 def build(
@@ -86,6 +87,8 @@ def build(
     formats: tuple[str, ...],
     size: float | None,
     keep: Path | None,
+    with_map: bool,
+    is_watched: bool,
     pictures: bool,
     timings: bool,
 ) -> None:
@@ -100,51 +103,33 @@ def build(
       skinmesh build marram-24.yaml -o fine --size 0.05 --formats vtu,inp
       skinmesh build marram-24.yaml --pictures
       skinmesh build marram-24.yaml -o after --keep before
+      skinmesh build marram-24.yaml -o after --keep before --map
+      skinmesh build marram-24.yaml --watch
     """
     start = perf_counter()
+    if with_map and keep is None:
+        raise click.UsageError("--map carries the nodes and elements of an earlier mesh: name its folder with --keep.")
     if pictures:
         require_pictures()
+    old = None if keep is None else read_built_mesh(keep).mesh
+    order = BuildOrder(blade_file, output, formats, size, pictures, mapped_from=old if with_map else None)
+    if is_watched:
+        watch(order, first=old)
+        return
     with shown_stages() as stages:
-        stages.begin("reading", 0.0)
-        blade = skinmesh.load(blade_file)
-        directory = output or Path(f"{blade.stem}-mesh")
-        _refuse_file_as_directory(directory)
-        if size is not None:
-            blade = replace(blade, mesh=replace(blade.mesh, size=constant(size)))
-        old = None if keep is None else read_built_mesh(keep).mesh
-        mesh = skinmesh.build(blade, keep=old, progress=stages.part(_BUILD, _FILES))
-        files = skinmesh.write(
-            mesh,
-            directory,
-            formats=formats,
-            extras={f"{word}.png": partial(picture, by=by) if pictures else None for by, word in SUBJECTS.items()},
-            progress=stages.part(_FILES, 1.0),
-        )
-        stages.end()
+        built = build_files(order, stages, keep=() if old is None else (old,), or_fresh=with_map)
     console = Console(highlight=False, markup=False, emoji=False)
     print_closing(
         console,
-        mesh,
-        directory=directory,
-        files=files,
+        built.mesh,
+        directory=order.directory,
+        files=built.files,
         seconds=perf_counter() - start,
-        solid_mass=_solid_mass(directory / f"{mesh.stem}.summary.json"),
+        solid_mass=built.solid_mass,
     )
-    if old is not None and keep is not None:
-        print_kept(console, old, mesh, directory=keep)
+    if built.kept is not None and keep is not None:
+        print_kept(console, built.kept, built.mesh, directory=keep)
+    if built.carried is not None and keep is not None:
+        print_map(console, built.carried, built.refusal, directory=keep)
     if timings:
         print_timings(console, stages.finished)
-
-
-def _solid_mass(summary: Path) -> float | None:
-    """Mass of the layers as solids from the summary just written, since working it out again takes a while."""
-    try:
-        return float(json.loads(summary.read_text(encoding="utf-8"))["solid_mass_kg"])
-    except OSError:  # moved away meanwhile: no reason to fail a finished build
-        return None
-
-
-def _refuse_file_as_directory(directory: Path) -> None:
-    """Say before a long build what writing would say after it."""
-    if directory.exists() and not directory.is_dir():
-        raise OutputError(f"cannot write into {directory}: it is a file; name a folder with -o")

@@ -11,7 +11,7 @@ from skinmesh.definition.blade import BladeDefinition
 from skinmesh.errors import LayoutChanged, MeshError, Problem
 from skinmesh.mesh.plane import PlaneMesh, with_middles
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
-from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.mesh.shellmesh import MeshOrigin, ShellMesh
 from skinmesh.skin.cover import StackTable
 from skinmesh.skin.kept import WAYS_OUT, KeptLayout
 from skinmesh.skin.skinmap import SKIN, SkinMap
@@ -89,13 +89,12 @@ def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
         ("hand", old.hand, blade.hand),
     )
     file = blade.sources[0].file if blade.sources else blade.stem
-    problems = [
-        Problem(file, 0, name, f"is now {now}; the mesh to keep has {before}. {WAYS_OUT}")
-        for name, before, now in pairs
-        if before != now
-    ]
-    if problems:
-        raise LayoutChanged(problems)
+    changed = [(name, f"is now {now}; the mesh to keep has {before}") for name, before, now in pairs if before != now]
+    if changed:
+        raise LayoutChanged(
+            [Problem(file, 0, name, f"{text}. {WAYS_OUT}") for name, text in changed],
+            changes=[f"{name} {text}" for name, text in changed],
+        )
 
 
 def kept_elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:
@@ -179,7 +178,8 @@ def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
     n = old.n_nodes
     node_number = np.concatenate([old.node_number[:n], mesh.node_number[n:]])
     _, warnings = compare_quality(old, mesh)
-    report = replace(mesh.report, warnings=mesh.report.warnings + warnings)
+    origin = old.report.divided_by or MeshOrigin(old.title, old.sources)
+    report = replace(mesh.report, warnings=mesh.report.warnings + warnings, divided_by=origin)
     return replace(mesh, node_number=node_number, element_number=old.element_number, report=report)
 
 

@@ -36,6 +36,21 @@ class Region:
     kind: str
 
 
+@dataclass(frozen=True)
+class MeshOrigin:
+    """The build that divided a mesh whose numbers were kept since.
+
+    Attributes
+    ----------
+    title : str
+    sources : tuple of Source
+        Its input files.
+    """
+
+    title: str
+    sources: tuple[Source, ...]
+
+
 @dataclass(frozen=True, eq=False)
 class BuildReport:
     """What the build has to say beside the mesh.
@@ -62,6 +77,9 @@ class BuildReport:
         What was asked of the mesh; None where that is not known.
     table : StationTable, optional
         The station table as it was read; None where that is not known.
+    divided_by : MeshOrigin, optional
+        The earlier build whose divisions and numbers were kept; then sizes in ``mesh_rule`` are not those of the mesh.
+        None where it is the build's own.
     """
 
     warnings: tuple[str, ...] = ()
@@ -74,6 +92,7 @@ class BuildReport:
     ply_areas: Mapping[str, float] = field(default_factory=dict)
     mesh_rule: MeshRule | None = None
     table: StationTable | None = None
+    divided_by: MeshOrigin | None = None
 
 
 @dataclass(frozen=True, eq=False)

@@ -57,18 +57,24 @@ class LayoutComparison:
     changes: list[str] = field(default_factory=list)
 
     def compare(self, kind: str, before: Sequence[str], now: Sequence[str]) -> None:
-        """Note the labels that went, came, or changed places."""
+        """Note the labels that went, came, joined, parted, or changed places."""
         if tuple(before) == tuple(now):
             return
-        gone = [label for label in before if label not in now]
-        new = [label for label in now if label not in before]
-        if not gone and not new:
-            moved = [line[2:] for line in ndiff(list(before), list(now)) if line.startswith("+ ")]
-            self.changes.append(f"{kind} changed places: {', '.join(moved)}")
+        reasons = [[part for label in labels for part in label.split(" + ")] for labels in (before, now)]
+        gone = [part for part in reasons[0] if part not in reasons[1]]
+        new = [part for part in reasons[1] if part not in reasons[0]]
         if gone:
             self.changes.append(f"{kind} no longer there: {', '.join(gone)}")
         if new:
             self.changes.append(f"{kind} that were not there: {', '.join(new)}")
+        if gone or new:
+            return
+        if sorted(before) == sorted(now):
+            moved = [line[2:] for line in ndiff(list(before), list(now)) if line.startswith("+ ")]
+            self.changes.append(f"{kind} changed places: {', '.join(moved)}")
+            return
+        joined = [label for label in (*before, *now) if " + " in label and (label in before) != (label in now)]
+        self.changes.append(f"{kind} joined or parted: {', '.join(joined)}")
 
 
 @dataclass(frozen=True)

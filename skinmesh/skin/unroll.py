@@ -114,7 +114,7 @@ def _refuse_other_layout(
             comparison.changes.append(f"the trailing edge {place} was {was} and is {now}")
     if comparison.changes:
         text = "the layout is not that of the mesh to keep: " + "; ".join(comparison.changes)
-        raise LayoutChanged([Problem(file, 0, "--keep", f"{text}. {WAYS_OUT}")])
+        raise LayoutChanged([Problem(file, 0, "--keep", f"{text}. {WAYS_OUT}")], changes=comparison.changes)
 
 
 def _spacing(blade: BladeDefinition, z: Floats) -> Floats | None:

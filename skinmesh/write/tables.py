@@ -14,12 +14,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.definition.blade import MeshRule, StationTable
+from skinmesh.definition.blade import MeshRule, Source, StationTable
 from skinmesh.definition.spanwise import Spanwise
 from skinmesh.laminate.code import LaminateCodes, laminate_codes
 from skinmesh.laminate.material import Material
 from skinmesh.mesh.measure import mass_properties, solid_mass
-from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.mesh.shellmesh import MeshOrigin, ShellMesh
 from skinmesh.write.deck_text import CAUTION
 
 STACK_COLUMNS = (
@@ -104,6 +104,7 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "reference_surface": mesh.surface,
         "order": mesh.order,
         "mesh": None if report.mesh_rule is None else _mesh_rule(report.mesh_rule),
+        "divisions_kept_from": None if report.divided_by is None else _origin(report.divided_by),
         "counts": {
             "nodes": mesh.n_nodes,
             "elements": len(mesh.cells),
@@ -144,8 +145,17 @@ def _summary(mesh: ShellMesh) -> dict[str, Any]:
         "largest_ply_end_move_at": report.ply_end_place,
         "warnings": list(report.warnings),
         "versions": _versions(),
-        "inputs": [{"file": source.file, "sha256": source.sha256} for source in mesh.sources],
+        "inputs": _inputs(mesh.sources),
     }
+
+
+def _inputs(sources: tuple[Source, ...]) -> list[dict[str, str]]:
+    return [{"file": source.file, "sha256": source.sha256} for source in sources]
+
+
+def _origin(origin: MeshOrigin) -> dict[str, Any]:
+    """The build that divided the mesh; sizes in the part ``mesh`` are then not those of the divisions."""
+    return {"title": origin.title, "inputs": _inputs(origin.sources)}
 
 
 def _mesh_rule(rule: MeshRule) -> dict[str, Any]:
