@@ -8,12 +8,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.check.finding import Finding, not_made, verdict_of
+from skinmesh.check.finding import Finding, listed, not_made, verdict_of
 from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import SpanTable
 from skinmesh.mesh.shellmesh import ShellMesh
 
 Ints = NDArray[np.int64]
+
+MOST_PLACES, MOST_REGIONS = 3, 3
+"""What the table names of all places; the JSON file has every one."""
 
 
 def check_drops(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit]) -> list[Finding]:
@@ -79,6 +82,7 @@ def _drops(mesh: ShellMesh, table: SpanTable) -> list[dict[str, Any]]:
                     "layers": int(max(ended[i], begun[i])),
                     "plies": [table.plies[p] for p in np.flatnonzero(change[i])],
                     "thickness_change_m": round(float(step[i]), 9),
+                    "over_m": round(float(over[i]), 6),
                     "slope": round(float(abs(step[i]) / over[i]), 6),
                 }
             )
@@ -88,19 +92,32 @@ def _drops(mesh: ShellMesh, table: SpanTable) -> list[dict[str, Any]]:
 def _line(mesh: ShellMesh, table: SpanTable, drops: list[dict[str, Any]], key: str, limit: Limit, text: str) -> Finding:
     values = np.array([drop[key] for drop in drops], dtype=float)
     beyond = np.flatnonzero(values > limit.warn)
-    worst = drops[int(values.argmax())]
+    # The worst first, and where layers end before where they begin.
+    ordered = sorted(range(len(drops)), key=lambda i: (-values[i], -drops[i]["layers_ended"]))
+    places: dict[str, list[str]] = {}
+    told = [drops[i] for i in ordered if values[i] > limit.warn] or [drops[ordered[0]]]
+    for drop in told:
+        places.setdefault(_place(drop), []).append(drop["region"])
     name_of = {region.name: i for i, region in enumerate(mesh.regions)}
     on_rows = np.zeros((len(mesh.regions), table.n_rows), dtype=bool)
-    for i in beyond:
+    for i in beyond.tolist():
         on_rows[name_of[drops[i]["region"]], drops[i]["row"] - 1 : drops[i]["row"] + 1] = True
+    shown = [f"{place}, on {listed(regions, most=MOST_REGIONS)}" for place, regions in places.items()][:MOST_PLACES]
+    more = len(places) - len(shown)
     return Finding(
         "ply drops",
         text.format(len(drops), values.max(), len(beyond)),
         limit.text,
         limit.source,
         verdict_of(fails=np.any(values > limit.fail), warns=len(beyond)),
-        f"{worst['region']}, z = {worst['z_m']:.3f} m: {worst['layers_ended']} end, {worst['layers_begun']} begin "
-        f"({', '.join(worst['plies'])}), thickness {1e3 * worst['thickness_change_m']:+.2f} mm",
+        "; ".join(shown) + (f"; and {more} more" if more else ""),
         np.flatnonzero(on_rows[mesh.region, table.row]),
         {"drops": drops} if key == "layers" else {},
     )
+
+
+def _place(drop: Mapping[str, Any]) -> str:
+    counts = [f"{drop[f'layers_{word}']} {verb}" for word, verb in (("ended", "end"), ("begun", "begin"))]
+    told = ", ".join(text for text in counts if not text.startswith("0 "))
+    step = f"{1e3 * drop['thickness_change_m']:+.2f} mm over {drop['over_m']:.3f} m"
+    return f"z = {drop['z_m']:.3f} m: {told} ({', '.join(drop['plies'])}), {step}"

@@ -11,14 +11,13 @@ from numpy.typing import NDArray
 from skinmesh.check.edges import smooth_pairs
 from skinmesh.check.finding import Finding, listed, not_made, span_of, verdict_of
 from skinmesh.check.limits import Limit
-from skinmesh.check.spantable import SpanTable
+from skinmesh.check.spantable import FEW_ROWS, SpanTable
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
 
 Ints = NDArray[np.int64]
 
 SCHEDULE = "one ply schedule, region by region"
-FEW_ROWS = 2
 LEAST_STEP, FLUSH = 0.02, 0.4
 NO_PLIES = "the blade file has no plies"
 

@@ -19,17 +19,20 @@ from skinmesh.check.finding import FAIL, VERDICTS, WARN, Finding, not_made
 from skinmesh.check.inputs import check_inputs, find_blade
 from skinmesh.check.joints import check_joints, check_normals
 from skinmesh.check.keyword_deck import check_keyword_deck
+from skinmesh.check.laminates import check_laminates
 from skinmesh.check.limits import Limit, set_limits
 from skinmesh.check.msh_file import check_msh_file
+from skinmesh.check.notches import check_notches
 from skinmesh.check.overlap import check_overlap
 from skinmesh.check.plies import check_plies
 from skinmesh.check.reading import BuiltMesh, read_built_mesh
 from skinmesh.check.sections import check_sections
 from skinmesh.check.shape import check_density, check_fidelity, check_quality
+from skinmesh.check.slender import check_slenderness
 from skinmesh.check.solver import check_solver
 from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
-from skinmesh.check.totals import check_files, check_mass
+from skinmesh.check.totals import check_build_warnings, check_files, check_mass
 from skinmesh.check.webs import check_web_ends
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
@@ -123,6 +126,9 @@ def check_directory(
         ("axes", lambda: check_axes(mesh)),
         ("plies", lambda: check_plies(mesh, table, limits=chosen)),
         ("ply drops", lambda: check_drops(mesh, table, limits=chosen)),
+        ("gaps and laps", lambda: check_notches(mesh, table, limits=chosen)),
+        ("laminates", lambda: check_laminates(mesh, table, limits=chosen)),
+        ("slender panels", lambda: check_slenderness(mesh, table, limits=chosen)),
         ("web ends", lambda: check_web_ends(mesh, limits=chosen)),
         ("quality", lambda: check_quality(mesh, limits=chosen)),
         ("density", lambda: check_density(mesh, table, limits=chosen)),
@@ -132,7 +138,7 @@ def check_directory(
         ("radius", lambda: check_radius(mesh, limits=chosen)),
         ("overlap", lambda: check_overlap(mesh, limits=chosen)),
         ("solver", lambda: check_solver(mesh, limits=chosen)),
-        ("totals", lambda: [*check_files(built), *check_mass(built)]),
+        ("totals", lambda: [*check_files(built), *check_mass(built), *check_build_warnings(built)]),
         ("decks", lambda: _check_decks(built)),
         ("inputs", lambda: check_inputs(built, folders=folders)),
     ]

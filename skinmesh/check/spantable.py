@@ -12,6 +12,9 @@ from skinmesh.mesh.shellmesh import ShellMesh
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
+FEW_ROWS = 2
+"""Element rows on which a ply that lies twice is a mistake and not a schedule that rises and falls."""
+
 
 @dataclass(frozen=True, eq=False)
 class SpanTable:
@@ -59,6 +62,10 @@ class SpanTable:
         np.maximum.at(layers, line.ravel(), self.counts[self.stack[own]])
         return rows, layers
 
+    def z_text(self, rows: Ints) -> str:
+        """Range of z of some element rows."""
+        return f"z = {self.z[rows.min()]:.3f} to {self.z[rows.max() + 1]:.3f} m"
+
     def main_stacks(self, region: int) -> tuple[Ints, Ints]:
         """Element rows of a region, and the stack that most of its elements there have."""
         own = np.flatnonzero(self.region == region)
@@ -92,6 +99,29 @@ def span_table(mesh: ShellMesh) -> SpanTable:
     region, rest = np.divmod(kinds, n_rows * (n_stacks + 1))
     at_row, stack_number = np.divmod(rest, n_stacks + 1)
     return SpanTable(row, z, region, at_row, stack_number, elements, plies, counts)
+
+
+def region_widths(mesh: ShellMesh, table: SpanTable) -> Floats:
+    """Width of every region on every element row, across the span: the mean of both ends of the row.
+
+    Parameters
+    ----------
+    mesh : ShellMesh
+    table : SpanTable
+
+    Returns
+    -------
+    (g, r) float array, m
+        Nought where a region has no elements.
+    """
+    corners = mesh.cells[:, : mesh.n_sides]
+    ends = np.roll(corners, -1, axis=1)
+    is_across = mesh.row[corners] == mesh.row[ends]
+    length = np.linalg.norm(mesh.points[ends] - mesh.points[corners], axis=2) * is_across
+    key = mesh.region * table.n_rows + table.row
+    size = len(mesh.regions) * table.n_rows
+    total = np.bincount(key, weights=length.sum(axis=1), minlength=size)
+    return np.asarray(0.5 * total.reshape(len(mesh.regions), table.n_rows))
 
 
 def element_rows(mesh: ShellMesh) -> tuple[Ints, Floats]:

@@ -10,6 +10,9 @@ from skinmesh.mesh.measure import element_areas
 
 MASS = 1e-6
 SAME = 1e-8
+MOST_WARNINGS, LONGEST_WARNING = 6, 110
+MEASURED = ("bare elements", "folded laminate", "thick laminate", "narrow elements")
+"""Beginnings of the build's warnings that the checks measure themselves."""
 
 
 def check_files(built: BuiltMesh) -> list[Finding]:
@@ -155,3 +158,40 @@ def check_mass(built: BuiltMesh) -> list[Finding]:
             )
         )
     return lines
+
+
+def check_build_warnings(built: BuiltMesh) -> list[Finding]:
+    """What the build warned of, but for what other checks measure.
+
+    Parameters
+    ----------
+    built : BuiltMesh
+
+    Returns
+    -------
+    list of Finding
+    """
+    told = [text for text in built.mesh.report.warnings if not text.startswith(MEASURED)]
+    return [
+        Finding(
+            "build warnings",
+            f"{len(told)} {'thing' if len(told) == 1 else 'things'} that the build warned of and no line here measures",
+            "warn 1",
+            "what was built otherwise than asked, or looks odd",
+            verdict_of(fails=False, warns=len(told)),
+            "; ".join(shortened(text) for text in told[:MOST_WARNINGS])
+            + (f"; and {len(told) - MOST_WARNINGS} more" if len(told) > MOST_WARNINGS else ""),
+            details={"warnings": list(told)},
+        )
+    ]
+
+
+def shortened(text: str) -> str:
+    """The first words of a long sentence.
+
+    Examples
+    --------
+    >>> shortened("narrow elements: " + "the laminate of many elements " * 9)
+    'narrow elements: the laminate of many elements the laminate of many elements the laminate of many elements …'
+    """
+    return text if len(text) <= LONGEST_WARNING else f"{text[:LONGEST_WARNING].rsplit(' ', 1)[0]} …"

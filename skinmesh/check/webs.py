@@ -46,14 +46,20 @@ def check_web_ends(mesh: ShellMesh, *, limits: Mapping[str, Limit]) -> list[Find
             f"{len(beyond)} of {len(ends)} feet beyond the limit",
             limit.text,
             limit.source,
-            verdict_of(fails=ratios.min() < limit.fail, warns=len(beyond)),
-            listed(f"{entry['web']}, z = {entry['z_m']:.3f} m on {entry['on']}" for entry in (beyond or [worst])),
+            # Nothing at all under a web's end is a failure even where the limit is nought.
+            verdict_of(fails=ratios.min() < limit.fail or ratios.min() <= 0.0, warns=len(beyond)),
+            listed(_place(entry) for entry in (beyond or [worst])),
             np.unique(np.concatenate([entry["elements"] for entry in beyond]))
             if beyond
             else np.zeros(0, dtype=np.int64),
             {"ends": [{key: value for key, value in entry.items() if key != "elements"} for entry in ends]},
         )
     ]
+
+
+def _place(entry: Mapping[str, Any]) -> str:
+    skin = f"{1e3 * entry['skin_m']:.2f} mm of skin" if entry["skin_m"] > 0 else "no plies"
+    return f"{entry['web']}, z = {entry['z_m']:.3f} m on {entry['on']}: {1e3 * entry['web_m']:.2f} mm on {skin}"
 
 
 def _ends(mesh: ShellMesh, web: int) -> list[dict[str, Any]]:
