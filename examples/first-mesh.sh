@@ -17,7 +17,7 @@ cat <<'NEXT'
 
 Look at it       in marram-24-mesh: marram-24.regions.png, .stacks.png, .thickness.png, .e1.png,
                  .cuts.png (three sections with every ply), .developed.png (the skin laid flat);
-                 marram-24.page.html in a browser; marram-24.vtu in ParaView
+                 marram-24.page.html in a browser; marram-24.vtm in ParaView
 Next             source .venv/bin/activate
                  skinmesh new my-blade
                  skinmesh build my-blade/marram-24.yaml

@@ -158,7 +158,7 @@ def test_build_writes_every_file_and_sums_up(run, small: Path) -> None:
     outcome = run("build", "small.yaml")
     assert outcome.status == 0, outcome.err
     directory = small / "small-mesh"
-    endings = ("vtu", "vtm", "vtm.d", "msh", "inp", "bdf", "stacks.csv", "summary.json")
+    endings = ("vtu", "vtm", "vtm.d", "msh", "inp", "bdf", "stacks.csv", "summary.json", "colours.json", "msh.opt")
     names = {f"small.{ending}" for ending in endings}
     assert {path.name for path in directory.iterdir()} == names
     assert all(name in outcome.out for name in names)
@@ -179,6 +179,7 @@ def test_the_folder_and_the_formats_are_those_asked_for(run, small: Path) -> Non
     outcome = run("build", "small.yaml", "-o", "a/b [c]", "--formats", "inp, VTU,inp")
     assert outcome.status == 0, outcome.err
     assert sorted(path.name for path in (small / "a" / "b [c]").iterdir()) == [
+        "small.colours.json",
         "small.inp",
         "small.stacks.csv",
         "small.summary.json",
@@ -214,7 +215,7 @@ def test_timings_name_the_stages_in_order(run) -> None:
     outcome = run("build", "small.yaml", "--timings", "--formats", "vtu")
     stages = re.findall(r"^(\S.*?) +\d+\.\d\d +\d+$", outcome.out, re.MULTILINE)
     assert stages[0] == "reading"
-    assert stages[-3:] == ["write vtu", "write stacks.csv", "write summary.json"]
+    assert stages[-4:] == ["write vtu", "write stacks.csv", "write summary.json", "write colours.json"]
     assert {"surface", "skin", "mesh"} <= set(stages)
     peaks = [int(peak) for peak in re.findall(r"^\S.*? +\d+\.\d\d +(\d+)$", outcome.out, re.MULTILINE)]
     assert peaks == sorted(peaks)

@@ -22,8 +22,17 @@ for _module in pkgutil.iter_modules([str(Path(__file__).parent / "formats")]):
 
 DEFAULT_FORMATS = ("vtu", "vtm", "msh", "inp", "bdf")
 CHECKS_FILE, CHECK_SETS_FILE = "checks.json", "checks.inp"
-STALE_FILES = (CHECKS_FILE, CHECK_SETS_FILE, "trial.json", "trial.log", "trial.png", "page.html")
-"""What check, trial and page write beside a mesh; of an earlier mesh they are removed, for they speak of another."""
+STALE_FILES = (
+    CHECKS_FILE,
+    CHECK_SETS_FILE,
+    "trial.json",
+    "trial.log",
+    "trial.png",
+    "page.html",
+    "colours.json",
+    "msh.opt",
+)
+"""What commands write beside a mesh; of an earlier mesh they are removed, for they speak of another."""
 
 
 @dataclass(frozen=True)

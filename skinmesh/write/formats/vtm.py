@@ -5,8 +5,11 @@ The file itself holds names only; the blocks are VTU files in a folder beside it
 
 from __future__ import annotations
 
+import os
 import re
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
+from concurrent.futures import ThreadPoolExecutor
+from functools import partial
 from pathlib import Path
 
 import numpy as np
@@ -40,8 +43,13 @@ def write_vtm(mesh: ShellMesh, path: Path) -> None:
     folder = parts_folder(path)
     folder.mkdir()
     grid = mesh_grid(mesh)
-    regions = [_line(name, folder, file) for name, file in _write_regions(mesh, grid, folder)]
-    sets = [_line(name, folder, file) for name, file in _write_node_sets(mesh, grid, folder)]
+    # Nearly all of the work is compression, during which other threads can run.
+    with ThreadPoolExecutor(os.cpu_count()) as pool:
+        region_files = pool.map(partial(_write_region, mesh, grid, folder), range(len(mesh.regions)))
+        set_files = pool.map(partial(_write_node_set, mesh, grid, folder), range(len(mesh.node_sets)))
+        names = [region.name for region in mesh.regions]
+        regions = [_line(name, folder, file) for name, file in zip(names, region_files, strict=True)]
+        sets = [_line(name, folder, file) for name, file in zip(mesh.node_sets, set_files, strict=True)]
     path.write_text(
         '<?xml version="1.0"?>\n'
         '<VTKFile type="vtkMultiBlockDataSet" version="1.0">\n'
@@ -57,29 +65,28 @@ def write_vtm(mesh: ShellMesh, path: Path) -> None:
     )
 
 
-def _write_regions(mesh: ShellMesh, grid: Grid, folder: Path) -> Iterator[tuple[str, str]]:
-    """Write the blocks of the regions; name and file of each, no file where it has no elements."""
-    for k, region in enumerate(mesh.regions):
-        own = np.flatnonzero(mesh.region == k)
-        if not len(own):
-            yield region.name, ""
-            continue
-        stacks = np.unique(mesh.stack[own])
-        names = _title(mesh) | {f"region: {region.name}": np.array([k + 1])}
-        names |= {f"stack: {mesh.stacks[s].content_name}": np.array([s + 1]) for s in stacks if s != NO_STACK}
-        file = _file_name(_REGION, k, len(mesh.regions), region.name)
-        write_grid(part_of(grid, own), folder / file, names=names)
-        yield region.name, file
+def _write_region(mesh: ShellMesh, grid: Grid, folder: Path, k: int) -> str:
+    """Write the block of a region; its file, or nothing where the region has no elements."""
+    own = np.flatnonzero(mesh.region == k)
+    if not len(own):
+        return ""
+    name = mesh.regions[k].name
+    stacks = np.unique(mesh.stack[own])
+    names = _title(mesh) | {f"region: {name}": np.array([k + 1])}
+    names |= {f"stack: {mesh.stacks[s].content_name}": np.array([s + 1]) for s in stacks if s != NO_STACK}
+    file = _file_name(_REGION, k, len(mesh.regions), name)
+    write_grid(part_of(grid, own), folder / file, names=names)
+    return file
 
 
-def _write_node_sets(mesh: ShellMesh, grid: Grid, folder: Path) -> Iterator[tuple[str, str]]:
-    """Write the blocks of the node sets; name and file of each."""
-    for k, name in enumerate(mesh.node_sets):
-        nodes = mesh.node_set(name)
-        file = _file_name(_NODES, k, len(mesh.node_sets), name)
-        names = _title(mesh) | {f"node set: {name}": mesh.node_number[nodes]}
-        write_grid(points_of(grid, nodes), folder / file, names=names)
-        yield name, file
+def _write_node_set(mesh: ShellMesh, grid: Grid, folder: Path, k: int) -> str:
+    """Write the block of a node set; its file."""
+    name = list(mesh.node_sets)[k]
+    nodes = mesh.node_set(name)
+    file = _file_name(_NODES, k, len(mesh.node_sets), name)
+    names = _title(mesh) | {f"node set: {name}": mesh.node_number[nodes]}
+    write_grid(points_of(grid, nodes), folder / file, names=names)
+    return file
 
 
 def _title(mesh: ShellMesh) -> dict[str, Ints]:
