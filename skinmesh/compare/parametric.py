@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import Akima1DInterpolator
+from scipy.interpolate import Akima1DInterpolator, CubicSpline
 
 from skinmesh.mesh.shellmesh import ShellMesh
 
@@ -55,7 +57,8 @@ def skin_grid(mesh: ShellMesh) -> SkinGrid | None:
     rows = np.unique(row[(seam > 0) & (seam < last)])
     kept = np.isin(row, rows)
     on_skin, row, seam = on_skin[kept], row[kept], seam[kept]
-    seams = np.unique(seam)
+    # where every ring is closed no node has the last seam for its own
+    seams = np.union1d(seam, [last])
     if len(rows) < 2 or len(seams) < 3:
         return None
     node = np.full((len(rows), len(seams)), -1, dtype=np.int64)
@@ -84,25 +87,27 @@ def points_at(mesh: ShellMesh, grid: SkinGrid, row: Floats, seam: Floats) -> Flo
 
     Notes
     -----
-    Akima's piecewise cubics, along every ring over its arc length and then along z: smooth between the nodes, and a
-    kink spoils no more than its neighbours (Akima, A new method of interpolation and smooth curve fitting, J. ACM 17
-    (1970), from memory).
+    Cubic splines along every ring over its arc length, as a skin is smooth from one trailing edge to the other; then
+    Akima's piecewise cubics along z, where seams may have kinks: one spoils no more than its neighbours (Akima, A new
+    method of interpolation and smooth curve fitting, J. ACM 17 (1970), from memory).
     """
     rings = mesh.points[grid.node]
     arc = np.concatenate(
         [np.zeros((len(rings), 1)), np.cumsum(np.linalg.norm(np.diff(rings, axis=1), axis=2), axis=1)], axis=1
     )
-    across = np.stack([_smooth(arc[k], rings[k], np.interp(seam, grid.seam, arc[k])) for k in range(len(rings))])
+    across = np.stack(
+        [_smooth(arc[k], rings[k], np.interp(seam, grid.seam, arc[k]), CubicSpline) for k in range(len(rings))]
+    )
     z = rings[:, 0, 2]
-    return _smooth(z, across, np.interp(row, grid.row, z))
+    return _smooth(z, across, np.interp(row, grid.row, z), Akima1DInterpolator)
 
 
-def _smooth(at: Floats, values: Floats, wanted: Floats) -> Floats:
+def _smooth(at: Floats, values: Floats, wanted: Floats, kind: Callable[..., Any]) -> Floats:
     """Interpolate along the first axis; at points that coincide the first one counts."""
     first = np.r_[True, np.diff(at) > 1e-12]
     at, values = at[first], values[first]
     if len(at) < 3:
         blended = np.stack([np.interp(wanted, at, column) for column in values.reshape(len(at), -1).T], axis=-1)
         return blended.reshape(len(wanted), *values.shape[1:])
-    found: Floats = Akima1DInterpolator(at, values, axis=0)(np.clip(wanted, at[0], at[-1]))
+    found: Floats = kind(at, values, axis=0)(np.clip(wanted, at[0], at[-1]))
     return found

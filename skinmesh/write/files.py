@@ -31,6 +31,8 @@ STALE_FILES = (
     "page.html",
     "colours.json",
     "msh.opt",
+    "diff.json",
+    "diff.png",
 )
 """What commands write beside a mesh; of an earlier mesh they are removed, for they speak of another."""
 
