@@ -23,18 +23,21 @@ ALLOWED = {
     "meshio": ("write.*",),
     "shapely": ("skin.*", "mesh.midsurface"),
     "yaml": ("definition.*",),
-    "pydantic": ("definition.*",),
+    "pydantic": ("definition.*", "sweep.fields"),
     "pydantic_core": ("definition.*",),
     "pyvista": ("show.*",),
     "vtkmodules": ("show.*",),
     "matplotlib": ("show.*",),
+    "dask": ("sweep.crew",),
+    "distributed": ("sweep.crew",),
+    "pyarrow": ("sweep.crew", "sweep.table"),
     "click": ("commands.*",),
     "rich": ("commands.*",),
     "numpy": ("*",),
     "scipy": ("*",),
 }
 # Heavy libraries of an optional extra: imported inside functions, so that the package works without them.
-OPTIONAL = {"pyvista", "vtkmodules", "matplotlib"}
+OPTIONAL = {"pyvista", "vtkmodules", "matplotlib", "dask", "distributed", "pyarrow"}
 FRONT_DOOR = "skinmesh"
 # Folders that stand side by side: neither knows the other.
 BESIDE = (("show", "write"), ("laminate", "surface"))

@@ -26,6 +26,7 @@ from skinmesh.commands.closing import printable
 from skinmesh.commands.diff_command import diff
 from skinmesh.commands.page_command import page
 from skinmesh.commands.starter import write_starter
+from skinmesh.commands.sweep_command import sweep
 from skinmesh.commands.trial_command import trial
 from skinmesh.definition.schema import json_schema
 from skinmesh.errors import OutputError, SkinmeshError
@@ -82,7 +83,7 @@ def schema() -> None:
     click.echo(json.dumps(json_schema(), indent=2, ensure_ascii=False))
 
 
-for _command in (build, beam, check, trial, page, diff):
+for _command in (build, beam, check, trial, page, diff, sweep):
     cli.add_command(_command)
 
 
