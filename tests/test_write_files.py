@@ -19,7 +19,7 @@ from sample_meshes import box_with_web, numbered_box, sandwich, tube
 from skinmesh.errors import InputError, OutputError
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write import placing
-from skinmesh.write.files import DEFAULT_FORMATS, write
+from skinmesh.write.files import DEFAULT_FORMATS, STALE_FILES, write
 from skinmesh.write.placing import new_files
 from skinmesh.write.registry import FORMATS, Format
 
@@ -188,6 +188,17 @@ def test_extras_come_with_the_mesh_and_old_ones_go_with_it(tmp_path: Path) -> No
     assert (tmp_path / "out" / "sample.note.txt").read_text() == "Sample box"
     write(box(), tmp_path / "out", formats=[], extras={"note.txt": None})
     assert sorted(contents(tmp_path / "out")) == sorted(TABLES)
+
+
+def test_what_commands_wrote_beside_an_earlier_mesh_goes(tmp_path: Path) -> None:
+    """It speaks of that mesh, or has its colours; another stem's stays."""
+    out = tmp_path / "out"
+    out.mkdir()
+    for ending in STALE_FILES:
+        (out / f"sample.{ending}").write_text("old")
+        (out / f"other.{ending}").write_text("other")
+    write(box(), out, formats=[])
+    assert sorted(contents(out)) == sorted([*TABLES, *(f"other.{ending}" for ending in STALE_FILES)])
 
 
 def test_progress_names_every_file_before_it_is_written(tmp_path: Path) -> None:
