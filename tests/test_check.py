@@ -364,6 +364,8 @@ def test_the_command_answers_with_its_status(
     for word in ("verdict", "measured", "limit (from)", "worst at", "no pass"):
         assert word in result.output
     assert any(line.startswith("fail ") for line in lines) == bool(status)
+    first = lines.index("Look first at") + 1
+    assert lines[first].startswith("fail  offset " if status else "warn  ")
 
 
 def test_the_command_in_a_pipe(tmp_path: Path) -> None:

@@ -18,7 +18,6 @@ from skinmesh.check.notches import check_notches
 from skinmesh.check.plies import check_plies
 from skinmesh.check.slender import check_slenderness
 from skinmesh.check.spantable import region_widths, span_table
-from skinmesh.check.totals import shortened
 from skinmesh.check.webs import check_web_ends
 from skinmesh.definition.blade import BladeDefinition, FromAxis, PlyRule, WebRule
 from skinmesh.definition.spanwise import Spanwise, constant
@@ -245,7 +244,3 @@ def test_plies_without_a_counterpart() -> None:
     layers = [Layer(f"ply {k}", blades.GLASS, 0.001, np.radians(angle)) for k, angle in enumerate((0, 30, 30, -30, 90))]
     assert unpaired_plies(Stack(tuple(layers))) == "2.00 mm at +30°, 1.00 mm at -30° ('ply 1', 'ply 2', 'ply 3')"
     assert unpaired_plies(Stack((layers[0],))) == ""
-
-
-def test_short_sentences_stay() -> None:
-    assert shortened("a cap is wide") == "a cap is wide"

@@ -114,3 +114,14 @@ def listed(names: Iterable[str], *, most: int = MOST_NAMED) -> str:
     all_names = list(names)
     shown = ", ".join(all_names[:most])
     return shown if len(all_names) <= most else f"{shown}, … ({len(all_names)})"
+
+
+def shortened(text: str, most: int) -> str:
+    """The first words of a long sentence.
+
+    Examples
+    --------
+    >>> shortened("the cap is wider than the skin", 20)
+    'the cap is wider …'
+    """
+    return text if len(text) <= most else f"{text[:most].rsplit(' ', 1)[0]} …"

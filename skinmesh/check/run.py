@@ -130,6 +130,7 @@ def check_directory(
         ("laminates", lambda: check_laminates(mesh, table, limits=chosen)),
         ("slender panels", lambda: check_slenderness(mesh, table, limits=chosen)),
         ("web ends", lambda: check_web_ends(mesh, limits=chosen)),
+        ("build warnings", lambda: check_build_warnings(built)),
         ("quality", lambda: check_quality(mesh, limits=chosen)),
         ("density", lambda: check_density(mesh, table, limits=chosen)),
         ("fidelity", lambda: check_fidelity(mesh, has_mid_nodes=built.has_mid_nodes, limits=chosen)),
@@ -138,7 +139,7 @@ def check_directory(
         ("radius", lambda: check_radius(mesh, limits=chosen)),
         ("overlap", lambda: check_overlap(mesh, limits=chosen)),
         ("solver", lambda: check_solver(mesh, limits=chosen)),
-        ("totals", lambda: [*check_files(built), *check_mass(built), *check_build_warnings(built)]),
+        ("totals", lambda: [*check_files(built), *check_mass(built)]),
         ("decks", lambda: _check_decks(built)),
         ("inputs", lambda: check_inputs(built, folders=folders)),
     ]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from skinmesh.check.finding import Finding, listed, not_made, span_of, verdict_of
+from skinmesh.check.finding import Finding, listed, not_made, shortened, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
 from skinmesh.mesh.measure import element_areas
 
@@ -179,19 +179,8 @@ def check_build_warnings(built: BuiltMesh) -> list[Finding]:
             "warn 1",
             "what was built otherwise than asked, or looks odd",
             verdict_of(fails=False, warns=len(told)),
-            "; ".join(shortened(text) for text in told[:MOST_WARNINGS])
+            "; ".join(shortened(text, LONGEST_WARNING) for text in told[:MOST_WARNINGS])
             + (f"; and {len(told) - MOST_WARNINGS} more" if len(told) > MOST_WARNINGS else ""),
             details={"warnings": list(told)},
         )
     ]
-
-
-def shortened(text: str) -> str:
-    """The first words of a long sentence.
-
-    Examples
-    --------
-    >>> shortened("narrow elements: " + "the laminate of many elements " * 9)
-    'narrow elements: the laminate of many elements the laminate of many elements the laminate of many elements …'
-    """
-    return text if len(text) <= LONGEST_WARNING else f"{text[:LONGEST_WARNING].rsplit(' ', 1)[0]} …"

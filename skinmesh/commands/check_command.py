@@ -6,17 +6,19 @@ from pathlib import Path
 from time import perf_counter
 
 import click
-from rich.console import Console
+from rich.console import Console, RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from skinmesh.check.finding import FAIL, NOT_MADE, PASS, WARN
+from skinmesh.check.finding import FAIL, NOT_MADE, PASS, WARN, Finding, shortened
 from skinmesh.check.run import CheckReport, check_directory, write_checks
 from skinmesh.commands.closing import CAUTION, grouped, print_parts, print_timings, printable
 from skinmesh.commands.stages import shown_stages
 
 CHECK_FAILED = 1
 PIPE_WIDTH = 160
+LONGEST_LINE = 190
+"""Letters of a line of the list of what to look at first; the table has all."""
 COLOURS = {PASS: "green", WARN: "yellow", FAIL: "bold red", NOT_MADE: "dim"}
 
 
@@ -27,7 +29,8 @@ COLOURS = {PASS: "green", WARN: "yellow", FAIL: "bold red", NOT_MADE: "dim"}
     metavar="FOLDER",
     type=click.Path(path_type=Path),
     multiple=True,
-    help="Where the input files lie, to compare them with the hashes of the build; may be given again.",
+    help="Where the input files lie, to compare them with the hashes of the build, and the mesh with their sections; "
+    "may be given again.",
 )
 @click.option("--timings", is_flag=True, help="Also print time and peak memory of each stage.")
 @click.pass_context
@@ -35,8 +38,11 @@ def check(context: click.Context, directory: Path, inputs: tuple[Path, ...], tim
     """Check the built mesh in DIR from its files alone.
 
     Prints a table: what was measured, the limit and where it comes from, the verdict, and where the worst is. The
-    same goes into DIR as checks.json, and the elements beyond a limit as named sets into checks.inp. Ends with exit
-    status 1 when a check failed.
+    same goes into DIR as checks.json, and the elements beyond a limit as named sets into checks.inp. Below the table,
+    failures and warnings once more in short. Ends with exit status 1 when a check failed.
+
+    Where the input files of the build are found, in FOLDER, here or beside DIR, the mesh's sections are measured
+    against the station table and the profiles; where not, that line says so.
 
     \b
     Examples:
@@ -99,5 +105,22 @@ def print_report(console: Console, report: CheckReport) -> None:
         console,
         Text(f"{printable(mesh.title)}: {grouped(len(mesh.cells))} elements", style="bold"),
         table,
+        *_look_first(report),
         Text(", ".join(words) + ".", style="bold red" if report.has_failed else "bold"),
     )
+
+
+def _look_first(report: CheckReport) -> list[RenderableType]:
+    """Failures, then warnings, one line a check: the table is long."""
+    table = Table.grid(padding=(0, 2, 0, 0))
+    for verdict in (FAIL, WARN):
+        found: dict[str, list[Finding]] = {}
+        for finding in report.findings:
+            if finding.verdict == verdict:
+                found.setdefault(finding.check, []).append(finding)
+        for name, own in found.items():
+            more = f" ({len(own)} lines)" if len(own) > 1 else ""
+            measured = own[0].measured.partition(";")[0]
+            told = shortened(": ".join(part for part in (measured, own[0].where) if part), LONGEST_LINE)
+            table.add_row(Text(verdict, style=COLOURS[verdict]), Text(f"{name}{more}"), Text(printable(told)))
+    return [Text("Look first at", style="bold"), table] if table.row_count else []
