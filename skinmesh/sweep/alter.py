@@ -124,7 +124,7 @@ def _along(pairs: list[list[float]], change: Change, amount: float, blade_span: 
     low, high = min(known_z[0], blade_span[0]), max(known_z[-1], blade_span[1])
     z = np.unique(np.round(z[(z >= low) & (z <= high)], 9))
     values = changed(np.interp(z, known_z, known), share(z, span, ramp), change.kind, amount)
-    return [[float(a), float(f"{b:.15g}")] for a, b in zip(z, values, strict=True)]
+    return [[float(a), float(f"{b:.12g}")] for a, b in zip(z, values, strict=True)]
 
 
 def altered_table(text: str, change: Change, amount: Any) -> str:

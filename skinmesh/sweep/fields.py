@@ -84,9 +84,7 @@ class SweepFields(Part):
 
     title: Name | None = Field(None, description="What the sweep is, in a few words.")
     blade: Name | None = Field(description="The base blade, looked up beside the sweep file.")
-    changes: Annotated[dict[str, ChangeFields], Field(min_length=1)] | None = Field(
-        description="Changes by names of your own."
-    )
+    changes: dict[str, ChangeFields] | None = Field(description="Changes by names of your own.")
     combine: Literal["grid", "together", "one by one"] | None = Field(
         None,
         description="grid (default): each value with each; together: the first values of all changes, then the second"

@@ -90,16 +90,17 @@ class _Reader:
         changes: list[Change] = []
         values: dict[str, list[Any]] = {}
         from_cases: list[str] = []
+        if fields.changes == {}:
+            self._report.add(("changes",), f"is empty; give at least one, {_EXAMPLES['changes']}")
         for name, change in (fields.changes or {}).items():
-            made = self._change(name, change, base)
-            if made is None:
-                continue
-            given = getattr(change, made.kind)
-            changes.append(made)
-            if given == FROM_CASES:
+            kind = self._kind(name, change)
+            made = None if kind is None else self._change(name, kind, change, base)
+            if made is not None:
+                changes.append(made)
+            if kind is not None and getattr(change, kind) == FROM_CASES:
                 from_cases.append(name)
-            else:
-                values[name] = given
+            elif kind is not None and getattr(change, kind) is not None:
+                values[name] = getattr(change, kind)
         combine = CASES if fields.cases is not None else fields.combine or GRID
         cases = self._cases(fields, from_cases, list(values)) if fields.cases or from_cases else None
         self._check_lengths(combine, values)
@@ -121,28 +122,30 @@ class _Reader:
             self._findings.problems.update(dict.fromkeys(error.problems))
             return None
 
-    def _change(self, name: str, fields: ChangeFields | None, base: BaseBlade | None) -> Change | None:
+    def _kind(self, name: str, fields: ChangeFields) -> str | None:
+        """Set, factor or add; None where not exactly one of them is given, or more is wrong."""
         path: FieldPath = ("changes", name)
-        if fields is None:
-            return None
         kinds = [kind for kind in _KINDS if getattr(fields, kind) is not None or self._report.has((*path, kind))]
         targets = [kind for kind in ("field", "column") if getattr(fields, kind) is not None]
         for given, known in ((kinds, _KINDS), (targets, ("field", "column"))):
             if len(given) != 1 and not self._report.has(path):
-                got = " and ".join(given) or "none of them"
-                self._report.add(path, f"must have one of {', '.join(known)}, got {got}")
+                self._report.add(path, f"must have one of {', '.join(known)}, got {' and '.join(given) or 'none'}")
         if fields.span is not None and not fields.span[0] <= fields.span[1]:
             self._report.add((*path, "span"), f"must go from the lower to the higher z, got {shown(fields.span)}")
         if fields.ramp is not None and fields.span is None:
             self._report.add((*path, "ramp"), "belongs to a span: outside it the change grows on this length")
+        return kinds[0] if len(kinds) == 1 else None
+
+    def _change(self, name: str, kind: str, fields: ChangeFields, base: BaseBlade | None) -> Change | None:
+        path: FieldPath = ("changes", name)
         if base is None or self._report.has(path):
             return None
         span = None if fields.span is None else (fields.span[0], fields.span[1])
-        change = Change(name, kinds[0], None, fields.column, span, fields.ramp or 0.0)
+        change = Change(name, kind, None, fields.column, span, fields.ramp or 0.0)
         if fields.field is None:
             return change
         try:
-            found = find_field(base.data, fields.field, may_be_new=kinds == [SET])
+            found = find_field(base.data, fields.field, may_be_new=kind == SET)
             if found[0] in ("planform", "title"):
                 raise RefusedError("cannot be swept; change columns of the table, or the blade's values")
         except RefusedError as refused:
@@ -225,17 +228,12 @@ class _Reader:
             row = dict(zip(header, cells, strict=False))
             if len(cells) > len(header):
                 self._findings.add(text.file, f"has {len(cells)} cells under {len(header)} names", line=number)
-            kinds = {name: self._kind(fields, name) for name in wanted}
+            kinds = {name: SET if (fields.changes or {})[name].set is not None else FACTOR for name in wanted}
             values = {
                 name: self._cell(text.file, number, name, row[name], kinds[name]) for name in wanted if row.get(name)
             }
             cases.append((row.get("name", ""), number, values))
         return cases
-
-    @staticmethod
-    def _kind(fields: SweepFields, name: str) -> str:
-        change = (fields.changes or {})[name]
-        return SET if change.set is not None else FACTOR
 
     def _cell(self, file: str, line: int, name: str, text: str, kind: str) -> Any:
         if is_number(text):
