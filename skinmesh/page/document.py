@@ -16,7 +16,13 @@ from skinmesh.page.packing import Packed
 _ASSETS = Path(__file__).parent / "assets"
 LIBRARY = "three.bundle.min.js"
 LICENCE = "three.LICENSE.txt"
-SCRIPTS = ("data.js", "paint.js", "viewer.js", "picked.js", "cut.js", "cutview.js", "charts.js", "tables.js", "main.js")
+SCRIPTS = tuple(
+    f"{part}.js"
+    for part in (
+        *("data", "paint", "places", "arrows", "camera", "overlay", "viewer"),
+        *("picked", "cut", "cutview", "charts", "tables", "main"),
+    )
+)
 _PLACE = re.compile(r"\{\{(\w+)\}\}")
 
 

@@ -14,6 +14,7 @@ from skinmesh.check.reading import BuiltMesh
 from skinmesh.laminate.stack import Stack
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
 from skinmesh.mesh.shellmesh import NO_STACK, ShellMesh
+from skinmesh.page.plies import ply_table
 from skinmesh.page.spanwise import beam_along, shape_along
 from skinmesh.show.develop import DevelopedMesh, develop
 from skinmesh.show.outline import border_edges
@@ -62,6 +63,7 @@ def gather_words(
             for stack, told in zip(mesh.stacks, summary["stacks"], strict=True)
         ],
         "plies": plies,
+        "ply_table": ply_table(mesh),
         "materials": [
             {"name": name, "colour": MATERIAL_TONES[k % len(MATERIAL_TONES)], "density": mesh.materials[name].density}
             for k, name in enumerate(materials)

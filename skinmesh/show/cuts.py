@@ -201,7 +201,7 @@ def _labels(
         middle = faces[walls].mean(axis=(0, 1))
         wall = walls[np.argmin(np.linalg.norm(faces[walls].mean(axis=1) - middle, axis=1))]
         is_web = mesh.regions[k].kind == "web"
-        away = np.array([-1.0, 0.0]) if is_web else section.normal[wall]
+        away = np.array([np.sign(section.normal[wall, 0]), 0.0]) if is_web else section.normal[wall]
         spot = faces[wall].mean(axis=0) + away * (6 if is_web else 11) / scale
         x, y = left + (spot[0] - extent[0]) * scale, top + (extent[3] - spot[1]) * scale
         align = "center" if abs(away[0]) < 0.3 else "left" if away[0] > 0 else "right"

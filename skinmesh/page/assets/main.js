@@ -24,7 +24,7 @@ function showControls(viewer, mesh) {
   byId("ply").append(...words.plies.map((name, k) => make("option", { value: k }, name)));
   byId("colour-by").addEventListener("change", (event) => viewer.set({ by: event.target.value }));
   byId("ply").addEventListener("change", (event) => {
-    if (viewer.state.arrows !== "fibre") byId("colour-by").value = "cover";
+    if (viewer.state.arrows !== "fibre" && byId("colour-by").value !== "angle") byId("colour-by").value = "cover";
     viewer.set({ ply: +event.target.value, by: byId("colour-by").value });
   });
   byId("arrows").addEventListener("change", (event) => viewer.set({ arrows: event.target.value }));
@@ -87,6 +87,18 @@ function showPicking(viewer, mesh) {
   return { pick, goTo };
 }
 
+// Paper shows the blade from both sides and laid flat, in the colours chosen; a view turned by hand comes first.
+function showOnPaper(viewer) {
+  const views = () => [...(viewer.state.view in VIEWS ? [] : ["now"]), "suction", "pressure", "flat"];
+  const caption = (view) => (view === "now" ? "As on the screen" : `${VIEWS[view].name}: ${whatIsUp(view)}`);
+  window.addEventListener("beforeprint", () => {
+    if (byId("stills").childElementCount) return;
+    byId("stills").append(...viewer.stills(views(), 1000).map(([view, picture]) =>
+      make("figure", {}, picture, make("figcaption", {}, caption(view)))));
+  });
+  window.addEventListener("afterprint", () => byId("stills").replaceChildren());
+}
+
 async function start() {
   showHead();
   const mesh = await readMesh();
@@ -100,6 +112,7 @@ async function start() {
   if (viewer) {
     showControls(viewer, mesh);
     picking = showPicking(viewer, mesh);
+    showOnPaper(viewer);
     viewer.resize();
     viewer.set({ by: "region", ply: 0, shape: "blade" });
     viewer.theme();
@@ -120,6 +133,11 @@ async function start() {
     for (const kind of ["input", "change"]) byId(id).addEventListener(kind, () => mark(cut.state.z));
   }
   new ResizeObserver(() => cut.redraw()).observe(byId("cut-view"));
+  showPlies((ply) => {
+    byId("ply").value = ply;
+    byId("colour-by").value = "cover";
+    viewer?.set({ ply, by: "cover" });
+  });
   showStacks();
   showChecks(picking.goTo);
   showLines();

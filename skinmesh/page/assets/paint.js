@@ -10,7 +10,11 @@ function paintOf(mesh, by, ply) {
   const bare = hexBytes(words.colours.bare);
   if (by === "region") {
     const tones = words.regions.map((region) => hexBytes(region.colour));
-    return { of: (e) => tones[mesh.region[e]], legend: () => null };
+    const parts = new Map(words.regions.map((region) => [region.part, region.colour]));
+    return {
+      of: (e) => tones[mesh.region[e]],
+      legend: () => make("div", { class: "legend" }, ...[...parts].map(([name, colour]) => make("span", {}, swatch(colour), " ", name))),
+    };
   }
   if (by === "stack") {
     const tones = words.colours.stack.map(hexBytes);
@@ -35,6 +39,7 @@ function paintOf(mesh, by, ply) {
         ...few.map((n) => make("span", {}, swatch(css(n)), ` ${n || "none"}`))),
     };
   }
+  if (by === "angle") return paintOfAngles(mesh, ply, bare);
   const scale = words.values[by];
   if (!scale) return { of: () => bare, legend: () => make("p", { class: "quiet" }, "The blade file has no plies.") };
   const tones = scale.colours.map(hexBytes);
@@ -52,6 +57,33 @@ function paintOf(mesh, by, ply) {
     legend: () => make("div", {}, make("b", {}, scale.title), make("div", { class: "steps" },
       ...scale.colours.map((colour, k) => make("span", { colour }, make("i", {}, +scale.levels[k].toPrecision(6)),
         k === last ? make("i", { class: "last" }, +scale.levels[k + 1].toPrecision(6)) : null)))),
+  };
+}
+
+const degrees = (angle) => `${angle > 0 ? "+" : angle < 0 ? "−" : ""}${Math.abs(+angle.toPrecision(6))}°`;
+
+// Blue is negative, orange positive, yellow none; a stack that has the ply at several angles is green.
+function toneOfAngle(angles) {
+  if (angles.length > 1) return [110, 160, 84];
+  const [a] = angles, share = Math.min(Math.abs(a) / 90, 1);
+  const [pale, dark] = a > 0 ? [[249, 190, 122], [140, 58, 0]] : [[158, 202, 235], [10, 56, 120]];
+  return a === 0 ? [240, 226, 150] : pale.map((v, d) => Math.round(v + share * (dark[d] - v)));
+}
+
+// Angle of one ply where it lies: a wrong sign shows as another colour, and in the legend as a number.
+function paintOfAngles(mesh, ply, bare) {
+  const angles = anglesOf(ply).map((found) => found.sort((a, b) => a - b));
+  const tones = angles.map((found) => (found.length ? toneOfAngle(found) : bare));
+  const groups = new Map();
+  for (let e = 0; e < mesh.size; e++) {
+    const name = (angles[mesh.stack[e]] ?? []).map(degrees).join(" and ") || "none";
+    if (!groups.has(name)) groups.set(name, [0, tones[mesh.stack[e]] ?? bare]);
+    groups.get(name)[0] += 1;
+  }
+  return {
+    of: (e) => tones[mesh.stack[e]] ?? bare,
+    legend: () => make("div", { class: "legend" }, make("b", {}, `Angle of ‘${words.plies[ply] ?? ""}’, + from e1 to e2`),
+      ...[...groups].sort().map(([name, [n, tone]]) => make("span", {}, swatch(`rgb(${tone.join(" ")})`), ` ${name} on ${grouped(n)} elements`))),
   };
 }
 

@@ -10,6 +10,19 @@ function showHead() {
   byId("caution").textContent = words.caution;
 }
 
+const fromTo = ([low, high], digits = 6) => (low === high ? `${+low.toPrecision(digits)}` : `${+low.toPrecision(digits)} to ${+high.toPrecision(digits)}`);
+
+function showPlies(choose) {
+  const rows = words.ply_table.map((one) => [
+    make("a", { class: "el", href: "#blade", onclick: () => choose(words.plies.indexOf(one.ply)) }, one.ply), one.materials.join(", "),
+    one.angles.map(degrees).join(", "), fromTo(one.thickness.map((t) => 1e3 * t)), fromTo(one.layers), one.regions.join(", "),
+    fixed(one.z[0]), fixed(one.z[1]), significant(one.area), significant(one.mass),
+  ]);
+  byId("ply-table").replaceChildren(rows.length
+    ? table(["ply", "material", "angle", "a layer, mm", "layers", "regions", "from z m", "to z m", "area m²", "kg"], rows, { numeric: [3, 4, 6, 7, 8, 9], name: "plies" })
+    : make("p", {}, "The blade file has no plies."));
+}
+
 function showStacks() {
   const head = make("div", { class: "stack" }, make("summary", { class: "quiet" },
     ...["stack", "content", "layers", "mm", "kg/m²", "elements", "laminate code"].map((name) => make("span", {}, name))));
