@@ -14,6 +14,7 @@ from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import FEW_ROWS, SpanTable
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Ints = NDArray[np.int64]
 
@@ -85,7 +86,8 @@ def _missing(mesh: ShellMesh, table: SpanTable) -> Finding:
     found = np.unique(np.concatenate(elements)) if elements else np.zeros(0, dtype=np.int64)
     return Finding(
         "missing plies",
-        f"{len(places)} holes along the span in a ply of a region (two pieces that are meant want two names)",
+        f"{counted(len(places), 'hole')} "
+        f"along the span in a ply of a region (two pieces that are meant want two names)",
         "none",
         SCHEDULE,
         verdict_of(fails=len(places)),
@@ -114,7 +116,8 @@ def _doubled(mesh: ShellMesh, table: SpanTable) -> Finding:
     found = np.unique(np.concatenate(elements)) if elements else np.zeros(0, dtype=np.int64)
     return Finding(
         "doubled plies",
-        f"{len(places)} plies lie twice on a few rows and once on both sides of them, {n_split} of these in two pieces",
+        f"{counted(len(places), 'ply lies', 'plies lie')} "
+        f"twice on a few rows and once on both sides of them, {n_split} of these in two pieces",
         "warn 1, fail 1 in two pieces",
         SCHEDULE,
         verdict_of(fails=n_split, warns=len(places)),
@@ -151,7 +154,8 @@ def _across(mesh: ShellMesh, table: SpanTable) -> Finding:
     beyond = np.flatnonzero((stack != main[mesh.region, table.row]) & (mesh.stack >= 0))
     return Finding(
         "stacks across regions",
-        f"{len(beyond)} elements have another stack than most of their region on the same element row",
+        f"{counted(len(beyond), 'element has', 'elements have')} "
+        f"another stack than most of their region on the same element row",
         "none",
         SCHEDULE,
         verdict_of(fails=len(beyond)),
@@ -169,6 +173,8 @@ def _order(mesh: ShellMesh, table: SpanTable) -> Finding:
     wrong = np.array(
         [bool(np.any(np.diff([ply for ply in listed_plies if ply not in repeated]) < 0)) for listed_plies in pieces]
     )
+    # A stack that lies nowhere is of an earlier schedule: a rebuild kept its number.
+    wrong &= np.bincount(mesh.stack[mesh.stack >= 0], minlength=len(wrong)) > 0
     beyond = np.flatnonzero(np.append(wrong, False)[mesh.stack])
     names = listed(f"stack {k + 1}" for k in np.flatnonzero(wrong))
     return Finding(
@@ -224,7 +230,8 @@ def _offset(mesh: ShellMesh) -> Finding:
     values = listed(f"{value:g}" for value in np.unique(np.round(mesh.offset, 6)))
     return Finding(
         "offset",
-        f"height of the nodes over the laminate's middle, in thicknesses: {values}; {len(beyond)} elements beyond",
+        f"height of the nodes over the laminate's middle, in thicknesses: {values}; "
+        f"{counted(len(beyond), 'element')} beyond",
         "0.5 on skins, 0 on webs",
         "nodes on the outward face of the skin, in the middle of webs",
         verdict_of(fails=len(beyond)),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -20,7 +21,8 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
 POOR_ASPECT, POOR_JACOBIAN = 10.0, 0.3  # common practice, no source
-WORSE = 1.2  # a share of poor elements that grew by more than this is worth a warning
+WORSE = 1.2  # a number of poor elements that grew by more than this factor is worth a warning
+STANDS_OFF = 5.0  # and so are edges that stand off by this many times what was meant; our choice, no source
 
 
 @dataclass(frozen=True)
@@ -184,15 +186,16 @@ def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
 
 
 def compare_quality(old: ShellMesh, new: ShellMesh) -> tuple[KeptQuality, tuple[str, ...]]:
-    """Set element quality before and after side by side.
+    """Set element quality before and after side by side, the trailing base left out, where slivers belong.
 
     Returns
     -------
     KeptQuality
     tuple of str
-        A warning where kept divisions have become poor.
+        Warnings where kept divisions have become poor.
     """
-    corners = [corner_points(mesh) for mesh in (old, new)]
+    inner = np.array([region.kind != "base" for region in old.regions])[old.region]
+    corners = [corner_points(mesh)[inner] for mesh in (old, new)]
     aspect, jacobian = [aspect_ratio(c) for c in corners], [scaled_jacobian(c) for c in corners]
     poor = [int(np.sum((a > POOR_ASPECT) | (j < POOR_JACOBIAN))) for a, j in zip(aspect, jacobian, strict=True)]
     quality = KeptQuality(
@@ -200,9 +203,36 @@ def compare_quality(old: ShellMesh, new: ShellMesh) -> tuple[KeptQuality, tuple[
         (float(jacobian[0].min()), float(jacobian[1].min())),
         (poor[0], poor[1]),
     )
-    if poor[1] <= WORSE * poor[0] + 1:
-        return quality, ()
-    return quality, (
-        f"kept divisions: {poor[1]} elements beyond aspect {POOR_ASPECT:g} or scaled Jacobian {POOR_JACOBIAN:g}, before"
-        f" {poor[0]}; a build without --keep would divide anew",
+    warnings = list(_standing_off(old, new))
+    if poor[1] > WORSE * poor[0]:
+        warnings.append(
+            f"kept divisions: {poor[1]} elements beyond aspect {POOR_ASPECT:g} or scaled Jacobian {POOR_JACOBIAN:g},"
+            f" before {poor[0]}; a build without --keep would divide anew"
+        )
+    return quality, tuple(warnings)
+
+
+def _standing_off(old: ShellMesh, new: ShellMesh) -> Iterator[str]:
+    """Say where straight edges across the skin have come to stand off it by far more than the mesh rule means."""
+    rule, table = new.report.mesh_rule, new.report.table
+    if rule is None or table is None:
+        return
+    k = new.n_sides
+    cells = new.cells[np.array([region.kind not in ("base", "web") for region in new.regions])[new.region]]
+    first, second, middle = cells[:, :k], np.roll(cells[:, :k], -1, axis=1), cells[:, k:]
+    across = new.row[first] == new.row[second]
+    first, second, middle = first[across], second[across], middle[across]
+    before, after = (
+        np.linalg.norm(mesh.points[middle] - 0.5 * (mesh.points[first] + mesh.points[second]), axis=1)
+        for mesh in (old, new)
     )
+    z = new.points[middle, 2]
+    allowed = rule.chord_error * np.interp(z, table.z, table.chord)
+    poor = np.flatnonzero((after > STANDS_OFF * allowed) & (after > WORSE * before))
+    if len(poor):
+        worst = poor[np.argmax(after[poor] / allowed[poor])]
+        yield (
+            f"kept divisions: straight edges stand off the surface by {1e3 * after[worst]:.3g} mm at z ="
+            f" {z[worst]:.3f} m, where mesh.chord_error means {1e3 * allowed[worst]:.3g} mm; a build without --keep"
+            " would divide anew"
+        )
