@@ -67,6 +67,7 @@ def along(difference: MeshDifference) -> Table | None:
     table = _table("along the span, largest change")
     for head in ("at z m", "old", "new", "change", ""):
         table.add_column(head, justify="right", no_wrap=True)
+    webs = {region.name for region in difference.new.mesh.regions if region.kind == "web"}
     scales = {"twist": (degrees(1.0), "°"), "mass per length": (1.0, "kg/m")}
     for name, found in difference.largest.items():
         factor, unit = scales.get(name, (1.0, "m"))
@@ -74,7 +75,9 @@ def along(difference: MeshDifference) -> Table | None:
         size = max(abs(found.old), abs(found.new))
         least = WIDER if name.startswith("width") else NOTABLE
         if abs(found.difference) > least * size and (name != "twist" or abs(value.difference or 0.0) > 0.01):
-            table.add_row(Text(readable(f"{name} {unit}")), f"{found.z:.3f}", *_columns(value))
+            region = name.removeprefix("width of ")
+            label = f"height of {region}" if region in webs else name
+            table.add_row(Text(readable(f"{label} {unit}")), f"{found.z:.3f}", *_columns(value))
     return table if table.row_count else None
 
 

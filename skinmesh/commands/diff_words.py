@@ -19,6 +19,10 @@ from skinmesh.definition.blade import SIDE_NAMES
 
 NOTABLE = 5e-4
 """Share of a value from which on its change is worth a line."""
+SAME = 1e-9
+"""Length that is nothing, m."""
+SLIDE = 0.05
+"""Share of the nodes' largest move up to which the skin as a shape has stayed."""
 WIDER = 5e-3
 """The same for widths along the span, which are means over parts of it."""
 
@@ -43,10 +47,12 @@ def verdict(difference: MeshDifference) -> Text:
 
 
 def _beside(difference: MeshDifference) -> str:
+    """What is another though the mesh is the same."""
     names = [entry.name for entry in difference.inputs]
-    return readable(
-        f"input files of another text: {listed(names)}" if names else "what the summaries say beside is not"
-    )
+    keys = [key for key in difference.summary_keys if key != "inputs"]
+    parts = [f"input files of another text: {listed(names)}"] if names else []
+    parts += [f"the summaries differ in {listed(keys)}"] if keys else []
+    return readable("; ".join(parts))
 
 
 def effect(difference: MeshDifference) -> Text:
@@ -202,7 +208,7 @@ def _regions(difference: MeshDifference) -> list[str]:
         ):
             moved.append(f"{entry.name}: z = {low.old:.3f} to {high.old:.3f} m, now {low.new:.3f} to {high.new:.3f} m")
     length = [float(built.mesh.points[:, 2].max()) for built in (difference.old, difference.new)]
-    if abs(length[1] - length[0]) > 1e-9:
+    if abs(length[1] - length[0]) > 5e-4:
         lines.append(f"blade length {length[0]:.3f} m, now {length[1]:.3f} m")
     if len(moved) <= 4:
         lines += moved
@@ -308,13 +314,16 @@ def _surface(difference: MeshDifference) -> list[str]:
     if nodes is not None and nodes.largest == 0.0:
         return ["no node moved"]
     if nodes is not None and nodes.way == BY_NUMBER:
-        lines.append(f"nodes moved {_moved(nodes)}")
+        word = "slid along the skin" if shape.largest < SLIDE * nodes.largest else "moved"
+        lines.append(f"nodes {word}: {_moved(nodes)}")
     elif nodes is not None and nodes.way == BY_PLACE:
-        lines.append(f"places of equal row and seam moved {_moved(nodes)}")
+        lines.append(f"places of equal row and seam moved: {_moved(nodes)}")
+    if shape.largest < SAME:
+        return [*lines, "the skin has the same shape"]
     height = difference.surface.height
     out, into = float(height.max(initial=0.0)), float(-height.min(initial=0.0))
     words = (
-        f"skin as a shape moved {_moved(shape)}; along its normal {_mm(max(out, 0.0))} out, {_mm(max(into, 0.0))} in"
+        f"skin as a shape moved: {_moved(shape)}; along its normal {_mm(max(out, 0.0))} out, {_mm(max(into, 0.0))} in"
     )
     if nodes is None or nodes.way != BY_NUMBER:
         words += " (with what the coarser mesh cannot resolve)"
@@ -327,7 +336,7 @@ def _moved(move: Move) -> str:
 
 
 def _mm(length: float) -> str:
-    return f"{1e3 * length:.3g} mm"
+    return f"{length:.3g} m" if length >= 1.0 else f"{1e3 * length:.3g} mm"
 
 
 def _warnings(difference: MeshDifference) -> list[str]:

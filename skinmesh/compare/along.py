@@ -47,7 +47,7 @@ class Along:
         middles: Floats = 0.5 * (self.ends[1:] + self.ends[:-1])
         return middles
 
-    def means(self, values: Floats, ends: Floats) -> Floats:
+    def means(self, values: NDArray[np.floating | np.bool_], ends: Floats) -> Floats:
         """Means of a quantity, given on the element rows, over other parts of the span; nought beyond the ends.
 
         Parameters

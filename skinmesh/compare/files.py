@@ -14,11 +14,19 @@ from skinmesh.write.formats.vtu import VtuContent
 
 _COMMENTS: Mapping[str, bytes] = {"inp": b"**", "bdf": b"$"}
 _WHOLE = ("msh",)
+ASIDE = ("versions", "divisions_kept_from")
+"""Keys of the summary that tell how a mesh came about: they make no difference."""
 
 
-def same_summary(old: Mapping[str, Any], new: Mapping[str, Any]) -> bool:
-    """Whether two summaries say the same, the versions apart."""
-    return {**old, "versions": None} == {**new, "versions": None}
+def differing_keys(old: Mapping[str, Any], new: Mapping[str, Any]) -> tuple[str, ...]:
+    """Keys of two summaries that say something else, those apart that tell how a mesh came about and not what it is.
+
+    Examples
+    --------
+    >>> differing_keys({"title": "a", "versions": 1}, {"title": "b", "versions": 2, "hand": "clockwise"})
+    ('title', 'hand')
+    """
+    return tuple(key for key in {**old, **new} if key not in ASIDE and old.get(key) != new.get(key))
 
 
 def same_vtu(old: VtuContent, new: VtuContent) -> bool:

@@ -41,6 +41,7 @@ def _plain(difference: MeshDifference, turn: float) -> dict[str, Any]:
         "new": _side(new.title, str(difference.new.directory)),
         "equal": difference.is_equal,
         "same_mesh": difference.is_same_mesh,
+        "summary_keys_that_differ": list(difference.summary_keys),
         "numbers": {
             "kept": numbering.is_kept,
             "sentence": numbering.sentence,

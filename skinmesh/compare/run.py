@@ -11,7 +11,7 @@ import numpy as np
 from skinmesh.check.reading import BuiltMesh, read_built_mesh
 from skinmesh.compare.along import Along, LargestChange, largest_change, measured_along
 from skinmesh.compare.elements import ElementChange, compare_elements
-from skinmesh.compare.files import differing_files, files_in_one, same_stacks, same_summary, same_vtu
+from skinmesh.compare.files import differing_files, differing_keys, files_in_one, same_stacks, same_vtu
 from skinmesh.compare.numbering import Numbering, compare_numbering
 from skinmesh.compare.parts import (
     input_entries,
@@ -40,9 +40,11 @@ class MeshDifference:
     ----------
     old, new : BuiltMesh
     is_equal : bool
-        Whether the files say the same in everything but dates and versions.
+        Whether the files say the same in everything but dates, versions and where kept divisions came from.
     is_same_mesh : bool
         Whether nodes, elements, sets, axes and plies are the same to the last bit, whatever the summaries say beside.
+    summary_keys : tuple of str
+        Keys of the summary that say something else.
     numbering : Numbering
     stations : StationChange
     whole : tuple of Value
@@ -71,6 +73,7 @@ class MeshDifference:
     new: BuiltMesh
     is_equal: bool
     is_same_mesh: bool
+    summary_keys: tuple[str, ...]
     numbering: Numbering
     stations: StationChange
     whole: tuple[Value, ...]
@@ -145,11 +148,13 @@ def compare_meshes(old: BuiltMesh, new: BuiltMesh, *, progress: Progress | None 
     tell("tables", 0.8)
     is_same_mesh = same_vtu(old.vtu, new.vtu) and same_stacks(old, new)
     files = differing_files(old, new) if is_same_mesh else ()
+    keys = differing_keys(old.summary, new.summary)
     warnings = [mesh.report.warnings for mesh in (old.mesh, new.mesh)]
     difference = MeshDifference(
         old=old,
         new=new,
-        is_equal=is_same_mesh and not files and same_summary(old.summary, new.summary),
+        is_equal=is_same_mesh and not files and not keys,
+        summary_keys=keys,
         is_same_mesh=is_same_mesh,
         numbering=numbering,
         stations=compare_stations(old.summary, new.summary),
@@ -188,7 +193,10 @@ def _largest(old: Along, new: Along) -> dict[str, LargestChange]:
     for name, width in new.widths.items():
         if name in old.widths:
             before, after = old.means(old.widths[name], ends), new.means(width, ends)
-            found[f"width of {name}"] = largest_change(middles, before, middles, after)
+            # a part in which a region ends would tell of the end and not of the width
+            whole = (old.means(old.widths[name] > 0.0, ends) > 1 - 1e-9) & (new.means(width > 0.0, ends) > 1 - 1e-9)
+            if whole.any():
+                found[f"width of {name}"] = largest_change(middles[whole], before[whole], middles[whole], after[whole])
     return found
 
 
