@@ -7,6 +7,7 @@ import numpy as np
 from skinmesh.check.finding import Finding, span_of, verdict_of
 from skinmesh.mesh.frames import element_axes
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 ORTHONORMAL = 1e-9
 DIRECTION = 0.001
@@ -57,7 +58,7 @@ def _line(mesh: ShellMesh, value: np.ndarray, limit: float, text: str, source: s
     beyond = beyond[np.argsort(-value[beyond], kind="stable")]
     return Finding(
         "axes",
-        f"{text.format(float(value.max()))} at most, {len(beyond)} elements beyond the limit",
+        f"{text.format(float(value.max()))} at most, {counted(len(beyond), 'element')} beyond the limit",
         f"fail {limit:g}",
         source,
         verdict_of(fails=len(beyond)),

@@ -23,6 +23,7 @@ from skinmesh.check.deck import (
 from skinmesh.check.finding import Finding, listed, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
 from skinmesh.mesh.inner_face import middle_height
+from skinmesh.wording import counted
 from skinmesh.write.deck_text import deck_layers
 
 Floats = NDArray[np.float64]
@@ -193,7 +194,7 @@ def _laminates(built: BuiltMesh, lines: Text, card: Text, elements: _Elements) -
     sections = Finding(
         CHECK,
         f"{np.count_nonzero(wrong_stacks)} of {len(mesh.stacks)} properties have other plies than the tables; "
-        f"{np.count_nonzero(wrong_prop)} elements with another property, "
+        f"{counted(int(np.count_nonzero(wrong_prop)), 'element')} with another property, "
         f"{np.count_nonzero(wrong_height)} with another offset",
         f"fail {SAME:g} of the value, {_HEIGHT_SHARE:g} of ZOFFS",
         SOURCE,

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from skinmesh.check.finding import FAIL, Finding, listed, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -102,32 +103,35 @@ def compare_geometry(check: str, built: BuiltMesh, deck: DeckGeometry, *, has_se
     beyond = np.zeros(len(mesh.cells), dtype=bool)
     has_more_nodes = has_second_order and mesh.order == 1
     if len(deck.node_number) != mesh.n_nodes and not has_more_nodes:
-        wrong.append(f"{len(deck.node_number)} nodes for {mesh.n_nodes}")
+        wrong.append(f"{counted(len(deck.node_number), 'node')} for {mesh.n_nodes}")
     if len(deck.element_number) != len(mesh.cells):
-        wrong.append(f"{len(deck.element_number)} elements for {len(mesh.cells)}")
+        wrong.append(f"{counted(len(deck.element_number), 'element')} for {len(mesh.cells)}")
     at = find_numbers(deck.node_number, mesh.node_number[: mesh.n_nodes])
     lost = at < 0
     if lost.any():
-        wrong.append(f"{np.count_nonzero(lost)} nodes are missing")
+        wrong.append(f"{counted(int(np.count_nonzero(lost)), 'node is', 'nodes are')} missing")
     off = np.where(lost, 0.0, np.abs(deck.points[np.maximum(at, 0)] - mesh.nodes).max(axis=1))
     moved = np.flatnonzero(off > PLACE)
     if len(moved):
         worst = moved[off[moved].argmax()]
         numbers = listed(str(number) for number in mesh.node_number[moved])
-        wrong.append(f"{len(moved)} nodes lie elsewhere, by {off[worst]:.3g} m at most (nodes {numbers})")
+        wrong.append(
+            f"{counted(len(moved), 'node lies', 'nodes lie')} "
+            f"elsewhere, by {off[worst]:.3g} m at most (nodes {numbers})"
+        )
         is_moved = np.zeros(len(mesh.points), dtype=bool)
         is_moved[moved] = True
         beyond |= is_moved[mesh.cells].any(axis=1)
     element = find_numbers(deck.element_number, mesh.element_number)
     if np.any(element < 0):
-        wrong.append(f"{np.count_nonzero(element < 0)} elements are missing")
+        wrong.append(f"{counted(int(np.count_nonzero(element < 0)), 'element is', 'elements are')} missing")
     wanted = mesh.node_number[mesh.connectivity]
     if deck.connectivity.shape[1] < wanted.shape[1]:
         raise DeckError(f"its elements have {deck.connectivity.shape[1]} nodes, not {wanted.shape[1]}")
     have = deck.connectivity[np.maximum(element, 0)][:, : wanted.shape[1]]
     other = (element >= 0) & np.any(have != wanted, axis=1)
     if other.any():
-        wrong.append(f"{np.count_nonzero(other)} elements have other nodes")
+        wrong.append(f"{counted(int(np.count_nonzero(other)), 'element has', 'elements have')} other nodes")
     found = np.flatnonzero(beyond | other)
     return Finding(
         check,
@@ -227,7 +231,7 @@ def compare_directions(
     beyond = np.flatnonzero(per_element > DIRECTION)
     return Finding(
         check,
-        f"ply directions off by {worst:.4f}° at most, {len(beyond)} elements beyond the limit",
+        f"ply directions off by {worst:.4f}° at most, {counted(len(beyond), 'element')} beyond the limit",
         f"fail {DIRECTION:g}°",
         "fibre directions recomputed from the deck alone",
         verdict_of(fails=len(beyond)),

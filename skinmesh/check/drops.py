@@ -12,6 +12,7 @@ from skinmesh.check.finding import Finding, listed, not_made, verdict_of
 from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import SpanTable
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Ints = NDArray[np.int64]
 
@@ -45,7 +46,7 @@ def check_drops(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
             drops,
             "layers",
             limits["layers ended at once"],
-            "{} places where plies begin or end; {:.0f} layers at once at most; {} places beyond the limit",
+            "{} where plies begin or end; {:.0f} layers at once at most; {} beyond the limit",
         ),
         _line(
             mesh,
@@ -53,8 +54,8 @@ def check_drops(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
             drops,
             "slope",
             limits["taper"],
-            "{} places where plies begin or end; thickness changes by {:.3f} of the length of an element row at most; "
-            "{} places beyond the limit",
+            "{} where plies begin or end; thickness changes by {:.3f} of the length of an element row at most; "
+            "{} beyond the limit",
         ),
     ]
 
@@ -106,7 +107,7 @@ def _line(mesh: ShellMesh, table: SpanTable, drops: list[dict[str, Any]], key: s
     more = len(places) - len(shown)
     return Finding(
         "ply drops",
-        text.format(len(drops), values.max(), len(beyond)),
+        text.format(counted(len(drops), "place"), values.max(), counted(len(beyond), "place")),
         limit.text,
         limit.source,
         verdict_of(fails=np.any(values > limit.fail), warns=len(beyond)),

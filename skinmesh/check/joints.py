@@ -12,6 +12,7 @@ from skinmesh.check.finding import Finding, listed, not_made, span_of, verdict_o
 from skinmesh.mesh.frames import element_axes
 from skinmesh.mesh.measure import element_areas, element_centres
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Ints = NDArray[np.int64]
 Flags = NDArray[np.bool_]
@@ -166,7 +167,7 @@ def _stored_normals(mesh: ShellMesh, normal: NDArray[np.float64]) -> Finding:
     beyond = np.flatnonzero(np.einsum("ij,ij->i", normal, mesh.e3) <= 0)
     return Finding(
         "normals",
-        f"node order turns about −e3 in {len(beyond)} elements",
+        f"node order turns about −e3 in {counted(len(beyond), 'element')}",
         "none",
         "nodes run counter-clockwise about e3",
         verdict_of(fails=len(beyond)),

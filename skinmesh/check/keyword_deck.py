@@ -28,6 +28,7 @@ from skinmesh.check.finding import Finding, listed, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
 from skinmesh.laminate.material import Material
 from skinmesh.mesh.frames import element_axes
+from skinmesh.wording import counted
 from skinmesh.write.deck_text import deck_layers, element_groups, safe_names, set_names
 
 Floats = NDArray[np.float64]
@@ -196,7 +197,7 @@ def _laminates(built: BuiltMesh, deck: _Deck, geometry: DeckGeometry) -> list[Fi
     beyond = np.flatnonzero(wrong)
     sections = Finding(
         CHECK,
-        f"sections of {len(beyond)} elements have other plies, thicknesses or offset than the tables",
+        f"sections of {counted(len(beyond), 'element')} have other plies, thicknesses or offset than the tables",
         f"fail {SAME:g} of the value",
         SOURCE,
         verdict_of(fails=len(beyond)),

@@ -15,6 +15,7 @@ from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Stack
 from skinmesh.laminate.theory import laminate_stiffness
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -74,7 +75,7 @@ def _balance(mesh: ShellMesh, A: Floats, limit: Limit) -> Finding:
     return Finding(
         "balance",
         f"stretch and shear coupled by {coupling.max():.3f} at most (A16, A26 over the root of what they couple); "
-        f"{len(beyond)} elements with unbalanced plies",
+        f"{counted(len(beyond), 'element')} with unbalanced plies",
         limit.text,
         f"{limit.source}; meant where a blade is to twist as it bends",
         verdict_of(fails=coupling.max() > limit.fail, warns=len(beyond)),
@@ -133,7 +134,7 @@ def _weakest(mesh: ShellMesh, table: SpanTable, A: Floats, limit: Limit) -> Find
     return Finding(
         "weak laminates",
         f"stiffness in its plane of the weakest laminate {ratio.min():.3f} of the median; "
-        f"{len(beyond)} elements below the limit",
+        f"{counted(len(beyond), 'element')} below the limit",
         limit.text,
         limit.source,
         verdict_of(fails=ratio.min() < limit.fail, warns=len(beyond)),
@@ -193,7 +194,7 @@ def _core_outside_panels(mesh: ShellMesh, table: SpanTable, core: Floats) -> Fin
     beyond = np.flatnonzero(odd[mesh.region, table.row])
     return Finding(
         "core",
-        f"core in {len(regions)} caps, edge strips or trailing bases, which are solid as a rule",
+        f"core in {counted(len(regions), 'cap, edge strip or trailing base', 'caps, edge strips or trailing bases')}",
         "warn 1",
         CORE_RULE,
         verdict_of(fails=False, warns=len(regions)),
@@ -226,7 +227,7 @@ def _core_on_one_side(mesh: ShellMesh, table: SpanTable, core: Floats, present: 
     beyond = np.flatnonzero(odd[mesh.region, table.row])
     return Finding(
         "core",
-        f"{len(places)} panels without core where the other side of the blade has it",
+        f"{counted(len(places), 'panel')} without core where the other side of the blade has it",
         "warn 1",
         CORE_RULE,
         verdict_of(fails=False, warns=len(places)),

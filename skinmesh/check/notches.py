@@ -13,6 +13,7 @@ from skinmesh.check.finding import Finding, listed, not_made, verdict_of
 from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import FEW_ROWS, SpanTable
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -204,7 +205,7 @@ def _line(mesh: ShellMesh, table: SpanTable, found: list[dict[str, Any]], limit:
     largest = max((float(entry["change"]) for entry in found), default=0.0)
     return Finding(
         "gaps and laps",
-        f"{len(found)} places where a material of a region is {text}"
+        f"{counted(len(found), 'place')} where a material of a region is {text}"
         + (f"; by {100 * largest:.0f} % at most" if found else ""),
         limit.text,
         f"{limit.source}, as a share of what lies beside",

@@ -34,6 +34,7 @@ from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
 from skinmesh.check.totals import check_build_warnings, check_files, check_mass
 from skinmesh.check.webs import check_web_ends
+from skinmesh.wording import counted
 from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
 from skinmesh.write.placing import new_file
@@ -229,7 +230,9 @@ def sets_text(report: CheckReport) -> str:
     for i, name in report.set_names.items():
         finding = report.findings[i]
         verdict = "failed" if finding.verdict == FAIL else "warned"
-        parts.append(f"** {finding.check}: {verdict}, {len(finding.elements)} elements\n*ELSET,ELSET={name}\n")
+        parts.append(
+            f"** {finding.check}: {verdict}, {counted(len(finding.elements), 'element')}\n*ELSET,ELSET={name}\n"
+        )
         parts.append(number_lines(mesh.element_number[np.sort(finding.elements)]))
     return "".join(parts)
 

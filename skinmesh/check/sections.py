@@ -17,6 +17,7 @@ from skinmesh.definition.blade import COUNTER_CLOCKWISE, BladeDefinition, Circle
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.surface.loft import Surface, loft_surface
 from skinmesh.surface.profile import naca_loop, read_unit_shape
+from skinmesh.wording import counted
 
 Complex = NDArray[np.complex128]
 Floats = NDArray[np.float64]
@@ -262,7 +263,7 @@ def _depths(mesh: ShellMesh, surface: Surface, rings: list[_Ring]) -> Finding:
     return Finding(
         "fidelity",
         f"nodes lie {1e3 * max(entry['deepest_m'] for entry in entries):.2g} mm inside the exact sections at most; "
-        f"{len(nodes)} lie outside of them or deeper than half of the laminate there, "
+        f"{counted(len(nodes), 'lies', 'lie')} outside of them or deeper than half of the laminate there, "
         f"by {1e3 * max(entry['beyond_m'] for entry in entries):.2g} mm at most",
         "warn 1",
         "nodes in the middle of the laminate; sections made anew from station table and profiles",

@@ -21,6 +21,7 @@ from skinmesh.mesh.quality import (
     warpage,
 )
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -74,7 +75,8 @@ def _line(mesh: ShellMesh, name: str, value: Floats, own: Ints, limit: Limit, te
     worst = int(own[badness.argmax()])
     return Finding(
         "element quality",
-        f"{text.format(name, float(value[worst]))}; {len(beyond) - n_fail} elements to warn of, {n_fail} fail",
+        f"{text.format(name, float(value[worst]))}; "
+        f"{counted(len(beyond) - n_fail, 'element')} to warn of, {n_fail} fail",
         limit.text,
         f"{METRIC}; limits {limit.source}",
         verdict_of(fails=n_fail, warns=len(beyond)),
@@ -130,7 +132,8 @@ def check_density(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Lim
     lines.append(
         Finding(
             "mesh density",
-            f"thickness over the shortest edge {ratio.max():.2f} at most; {len(beyond)} elements thicker than that",
+            f"thickness over the shortest edge {ratio.max():.2f} at most; "
+            f"{counted(len(beyond), 'element')} thicker than that",
             limit.text,
             limit.source,
             verdict_of(fails=ratio.max() > limit.fail, warns=len(beyond)),
@@ -180,7 +183,8 @@ def _chord_error(mesh: ShellMesh, limit: Limit) -> Finding:
     return Finding(
         "fidelity",
         f"straight edges stand off the mid nodes by {error[worst]:.5f} of the chord "
-        f"({1e3 * distance[worst]:.2f} mm) at most; {np.count_nonzero(is_beyond)} edges beyond the limit",
+        f"({1e3 * distance[worst]:.2f} mm) at most; "
+        f"{counted(int(np.count_nonzero(is_beyond)), 'edge')} beyond the limit",
         limit.text,
         limit.source,
         verdict_of(fails=error[worst] > limit.fail, warns=is_beyond.any()),

@@ -13,6 +13,7 @@ from skinmesh.check.limits import Limit
 from skinmesh.check.spantable import SpanTable, region_widths
 from skinmesh.laminate.theory import laminate_stiffness
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 KINDS = ("panel", "cap", "web")
 
@@ -74,7 +75,8 @@ def check_slenderness(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str,
     return [
         Finding(
             "slender panels",
-            f"width over thickness as a solid plate {largest:.0f} at most; {len(beyond)} panels, caps or webs beyond",
+            f"width over thickness as a solid plate {largest:.0f} at most; "
+            f"{counted(len(beyond), 'panel, cap or web', 'panels, caps or webs')} beyond",
             limit.text,
             limit.source,
             verdict_of(fails=largest > limit.fail, warns=len(beyond)),

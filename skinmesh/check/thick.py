@@ -15,6 +15,7 @@ from skinmesh.mesh.frames import element_axes
 from skinmesh.mesh.inner_face import inner_face_ratio
 from skinmesh.mesh.measure import element_areas, element_centres
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -47,8 +48,9 @@ def check_folding(mesh: ShellMesh, *, limits: Mapping[str, Limit], has_mid_nodes
     return [
         Finding(
             "inner face",
-            f"laminate fills {depth.max():.2f} of the radius of curvature at most; {n_fail} elements fold, "
-            f"{len(beyond) - n_fail} come near it{note}",
+            f"laminate fills {depth.max():.2f} of the radius of curvature at most; "
+            f"{counted(n_fail, 'element folds', 'elements fold')}, "
+            f"{counted(len(beyond) - n_fail, 'comes', 'come')} near it{note}",
             limit.text,
             limit.source,
             verdict_of(fails=n_fail, warns=len(beyond)),

@@ -7,6 +7,7 @@ import numpy as np
 from skinmesh.check.finding import Finding, listed, not_made, shortened, span_of, verdict_of
 from skinmesh.check.reading import BuiltMesh
 from skinmesh.mesh.measure import element_areas
+from skinmesh.wording import counted
 
 MASS = 1e-6
 SAME = 1e-8
@@ -62,7 +63,7 @@ def _counts(built: BuiltMesh) -> Finding:
         wrong.append(f"{repeated} solver numbers are given twice")
     return Finding(
         "files agree",
-        f"{len(wrong)} counts or names of the summary against the VTU",
+        f"{counted(len(wrong), 'count or name', 'counts or names')} of the summary against the VTU",
         "none",
         "one build wrote them all",
         verdict_of(fails=len(wrong)),
@@ -108,11 +109,11 @@ def _laminate_arrays(built: BuiltMesh) -> Finding:
         off = ~np.isclose(arrays[name], wanted, rtol=SAME, atol=1e-12)
         wrong |= off
         if off.any():
-            names.append(f"{name} of {np.count_nonzero(off)} elements")
+            names.append(f"{name} of {counted(int(np.count_nonzero(off)), 'element')}")
     beyond = np.flatnonzero(wrong)
     return Finding(
         "files agree",
-        f"{len(beyond)} elements whose arrays in the VTU are not those of their stack and region",
+        f"{counted(len(beyond), 'element')} with arrays in the VTU that are not those of stack and region",
         f"fail {SAME:g} of the value",
         "one build wrote them all",
         verdict_of(fails=len(beyond)),
@@ -175,7 +176,7 @@ def check_build_warnings(built: BuiltMesh) -> list[Finding]:
     return [
         Finding(
             "build warnings",
-            f"{len(told)} {'thing' if len(told) == 1 else 'things'} that the build warned of and no line here measures",
+            f"{counted(len(told), 'thing')} that the build warned of and no line here measures",
             "warn 1",
             "what was built otherwise than asked, or looks odd",
             verdict_of(fails=False, warns=len(told)),

@@ -140,7 +140,7 @@ def _facts(mesh: ShellMesh, solid_mass: float | None) -> Table:
     )
     table.add_row("  regions", grouped(len(mesh.regions)))
     for name, elements in mesh.element_sets.items():
-        table.add_row(f"  {printable(name)}", grouped(len(elements)), "elements")
+        table.add_row(f"  {printable(name)}", grouped(len(elements)), "element" if len(elements) == 1 else "elements")
     if not mesh.stacks:
         table.add_row("  stacks", "none", "no plies in the blade file: the decks carry no sections")
         return table

@@ -28,6 +28,7 @@ from skinmesh.skin.flatpattern import ply_areas, region_polygons
 from skinmesh.skin.unroll import unroll_skin
 from skinmesh.surface.doubts import doubtful_profiles, doubtful_stations
 from skinmesh.surface.loft import loft_surface
+from skinmesh.wording import counted
 
 Progress = Callable[[str, float], None]
 
@@ -134,7 +135,9 @@ def _with_bare_elements(mesh: ShellMesh) -> ShellMesh:
     bare = np.flatnonzero(mesh.stack == NO_STACK)
     if len(bare) == 0:
         return mesh
-    text = f"bare elements: no ply covers {len(bare)} elements ({_place(mesh, bare)}); the decks give them no section"
+    them = "it" if len(bare) == 1 else "them"
+    text = f"bare elements: no ply covers {counted(len(bare), 'element')} ({_place(mesh, bare)}); "
+    text += f"the decks give {them} no section"
     report = replace(mesh.report, warnings=(text, *mesh.report.warnings))
     return replace(mesh, element_sets={**mesh.element_sets, "bare elements": bare}, report=report)
 
@@ -144,7 +147,8 @@ def _place(mesh: ShellMesh, found: NDArray[np.int64]) -> str:
     regions = ", ".join(mesh.regions[i].name for i in np.unique(mesh.region[found]))
     z = mesh.points[mesh.cells[found, : mesh.n_sides], 2]
     shown = ", ".join(str(number) for number in mesh.element_number[found][:8])
-    return f"{regions}, z = {z.min():.3f} to {z.max():.3f} m; elements {shown}{', …' if len(found) > 8 else ''}"
+    word = "element" if len(found) == 1 else "elements"
+    return f"{regions}, z = {z.min():.3f} to {z.max():.3f} m; {word} {shown}{', …' if len(found) > 8 else ''}"
 
 
 def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
@@ -152,9 +156,9 @@ def _thick_text(mesh: ShellMesh, name: str, found: NDArray[np.int64]) -> str:
         "folded laminate": "is thicker than the surface's curvature allows: its inner face folds, and a solver of"
         " layered shells stops there; take fewer plies or larger elements",
         "thick laminate": "fills more than 0.8 of the radius of curvature",
-        "narrow elements": "is thicker than their shortest edge is long; shell theory says little there",
-    }[name]
-    return f"{name}: the laminate of {len(found)} element{'s' if len(found) > 1 else ''} {rule} ({_place(mesh, found)})"
+        "narrow elements": "is thicker than {their} shortest edge is long; shell theory says little there",
+    }[name].format(their="its" if len(found) == 1 else "their")
+    return f"{name}: the laminate of {counted(len(found), 'element')} {rule} ({_place(mesh, found)})"
 
 
 def _silent(stage: str, done: float) -> None:

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from skinmesh.mesh.frames import element_axes
 from skinmesh.mesh.inner_face import NodeNormals, inner_face_ratio, node_normals
 from skinmesh.mesh.shellmesh import NO_STACK, ShellMesh
+from skinmesh.wording import counted
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -226,6 +227,6 @@ def _carry_webs(mesh: ShellMesh, moves: Floats, on_skin: NDArray[np.bool_]) -> N
 def _told(mesh: ShellMesh, nodes: NDArray[np.bool_], reason: str) -> str:
     z = mesh.points[nodes, 2]
     return (
-        f"mid surface: the move of {int(nodes.sum())} nodes was limited, since {reason} (z = {z.min():.3f} to"
-        f" {z.max():.3f} m)"
+        f"mid surface: the move of {counted(int(nodes.sum()), 'node')} was limited, since {reason}"
+        f" (z = {z.min():.3f} to {z.max():.3f} m)"
     )
