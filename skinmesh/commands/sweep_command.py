@@ -155,7 +155,7 @@ def _print(done: Sweep, directory: Path, no_picture: str | None, *, seconds: flo
         console.print(rows)
     failed = [(row["variant"], row["reason"]) for row in table.rows if row["status"] == FAILED]
     _print_list(console, failed, "failed")
-    _print_list(console, _with_failures(table), "has failed checks")
+    _print_list(console, _with_failures(table), "with failed checks")
     names = [f"{stem}.csv", f"{stem}.parquet", *([f"{stem}.png"] if no_picture is None else [])]
     console.print(Text(printable(f"In {directory}: {', '.join(names)}")))
     if no_picture:
@@ -186,7 +186,13 @@ def _range_table(table: ResultTable) -> Table:
 
 
 def _print_list(console: Console, told: list[tuple[int, str]], what: str) -> None:
-    for number, text in told[:MOST_TOLD]:
-        console.print(Text(printable(f"  variant {number} {what}: {text}"), style="red"))
-    if len(told) > MOST_TOLD:
-        console.print(Text(f"  … and {len(told) - MOST_TOLD} more; the table has them all", style="red"))
+    """Say of which variants a text is true, each text once."""
+    numbers: dict[str, list[int]] = {}
+    for number, text in told:
+        numbers.setdefault(text, []).append(number)
+    for text, found in list(numbers.items())[:MOST_TOLD]:
+        named = ", ".join(map(str, found[:MOST_TOLD])) + (f", … ({len(found)})" if len(found) > MOST_TOLD else "")
+        word = "variant" if len(found) == 1 else "variants"
+        console.print(Text(printable(f"  {word} {named} {what}: {text}"), style="red"))
+    if len(numbers) > MOST_TOLD:
+        console.print(Text(f"  … and {len(numbers) - MOST_TOLD} more; the table has them all", style="red"))
