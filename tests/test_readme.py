@@ -23,6 +23,7 @@ BLOCKS = re.findall(r"^```(\w+)\n(.*?)^```", README, re.MULTILINE | re.DOTALL)
 SHELL = [text for kind, text in BLOCKS if kind == "sh"]
 PYTHON = [text for kind, text in BLOCKS if kind == "python"]
 SET_UP = "bash examples/first-mesh.sh\n"
+CHANGE = "cp -r my-blade wider-blade\n"
 SOLVER = "ccx"
 READER = "pyNastran"
 
@@ -83,7 +84,11 @@ def test_other_commands_print_the_lines_that_the_page_shows(shell: Shell, comman
     (shown,) = re.findall(rf"```sh\n{re.escape(block)}```.*?```text\n(.*?)```", README, re.DOTALL)
     done = shell(block)
     assert done.returncode == 0, done.stderr
-    said = iter([*masked(done.stdout), ""])
+    assert_shown(shown, done.stdout)
+
+
+def assert_shown(shown: str, printed: str) -> None:
+    said = iter([*masked(printed), ""])
     is_cut = False
     for line in masked(shown):
         if line == "…":
@@ -94,6 +99,15 @@ def test_other_commands_print_the_lines_that_the_page_shows(shell: Shell, comman
         assert next(said).startswith(line)
         is_cut = False
     assert len(masked(shown)) > 10
+
+
+def test_a_change_prints_the_lines_that_the_page_shows(shell: Shell) -> None:
+    """The last command of the block says by its status that the meshes are not equal."""
+    (block,) = [text for text in SHELL if text.startswith(CHANGE)]
+    (shown,) = re.findall(rf"```sh\n{re.escape(block)}```.*?```text\n(.*?)```", README, re.DOTALL)
+    done = shell(block)
+    assert done.returncode == 1, done.stderr
+    assert_shown(shown, done.stdout)
 
 
 @pytest.mark.solver
@@ -168,6 +182,7 @@ def test_every_shell_and_python_block_is_run_by_a_test() -> None:
         SET_UP,
         two_commands(),
         *[text for text in SHELL if SOLVER in text or re.match("skinmesh (check|beam|trial) ", text)],
+        *[text for text in SHELL if text.startswith(CHANGE)],
     ]
     assert sorted(run) == sorted(SHELL)
 
