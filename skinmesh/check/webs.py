@@ -75,10 +75,13 @@ def _ends(mesh: ShellMesh, web: int) -> list[dict[str, Any]]:
         if row in (mesh.row.min(), mesh.row.max()):
             continue
         at_end = mesh.row[corners] == row
-        feet = np.intersect1d(corners[at_end], skin_corners)
+        is_end = np.zeros(len(mesh.points), dtype=bool)
+        is_end[corners[at_end]] = True
+        near = np.flatnonzero(is_end[skin_corners].any(axis=1))
+        feet = np.intersect1d(corners[at_end], skin_corners[near])
         web_thickness = float(mesh.thickness[own[at_end.any(axis=1)]].max())
         for node in feet.tolist():
-            under = skin[np.any(skin_corners == node, axis=1)]
+            under = skin[near[np.any(skin_corners[near] == node, axis=1)]]
             ends.append(
                 {
                     "web": mesh.regions[web].name,
