@@ -17,6 +17,7 @@ from skinmesh.show.page import Page
 from skinmesh.show.trial_plot import trial_plot
 from skinmesh.trial.beamside import EXACT
 from skinmesh.trial.compare import ModeCase, StaticCase
+from skinmesh.trial.form import form_parts
 from skinmesh.trial.report import (
     LOOK,
     failures,
@@ -46,8 +47,13 @@ _UNITS = {0: (1e3, "mm"), 1: (1e3, "mm"), 5: (57.29577951308232, "°")}
     help="Blade file, for theory on the exact sections. Looked for in the current folder, beside DIR and in DIR; where"
     " it is not found the sections of the mesh are taken.",
 )
+@click.option(
+    "--hold-shape",
+    is_flag=True,
+    help="Run it a second time with sections that keep their form, to tell what their change of form makes different.",
+)
 @click.option("--picture/--no-picture", default=None, help="Draw the trial (PNG); by default where that is possible.")
-def trial(directory: Path, solver: Path | None, blade_file: Path | None, picture: bool | None) -> int:
+def trial(directory: Path, solver: Path | None, blade_file: Path | None, hold_shape: bool, picture: bool | None) -> int:
     """Run the built model in DIR in CalculiX and set it beside beam theory.
 
     The root held: flap-wise and edge-wise tip load, tip torque, weight, six natural frequencies; beside Euler–Bernoulli
@@ -59,6 +65,7 @@ def trial(directory: Path, solver: Path | None, blade_file: Path | None, picture
     Examples:
       skinmesh trial marram-24-mesh
       skinmesh trial marram-24-mesh --blade marram-24.yaml --solver ~/bin/ccx_2.20
+      skinmesh trial marram-24-mesh --hold-shape
     """
     no_picture = _picture_hindrance(picture)
     console = Console(highlight=False, markup=False, emoji=False)
@@ -66,7 +73,9 @@ def trial(directory: Path, solver: Path | None, blade_file: Path | None, picture
     try:
         with shown_stages() as stages:
             program = find_solver(solver)
-            done = run_trial(directory, solver=program, blade_file=blade_file, progress=stages.begin)
+            done = run_trial(
+                directory, solver=program, blade_file=blade_file, hold_shape=hold_shape, progress=stages.begin
+            )
             stages.end()
     except SolverError as error:
         stem = _stem(directory)
@@ -74,7 +83,8 @@ def trial(directory: Path, solver: Path | None, blade_file: Path | None, picture
         click.echo(printable(f"{error}\nThe whole log: {written[0]}"), err=True)
         return FAILED
     stem = done.model.mesh.stem
-    files = {"trial.json": trial_json(done), "trial.log": done.run.log}
+    logs = [done.run.log, *([done.held.run.log] if done.held else [])]
+    files = {"trial.json": trial_json(done), "trial.log": "\n".join(logs)}
     written = _write(directory, stem, files, plot=None if no_picture is not None else done)
     _print(console, done)
     for path in written:
@@ -132,6 +142,8 @@ def _print(console: Console, done: Trial) -> None:
     console.print(Text(f"  theory: Euler–Bernoulli; {printable(done.beams.note)}"))
     console.print(_table(done))
     console.print(_parts_table(done))
+    if done.held is not None:
+        console.print(_held_table(done))
     difference = mass_difference(done)
     if isnan(difference):
         words = "the solver prints none for layered triangles"
@@ -180,6 +192,27 @@ def _parts_table(done: Trial) -> Table:
         if parts:
             rows.add_row(name, *(f"{parts[head]:+.2%}" for head in heads))
     return rows
+
+
+def _held_table(done: Trial) -> Table:
+    """The second run: sections that keep their form."""
+    rows = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold")
+    rows.add_column("sections keep their form")
+    for head in ("solver", "theory", "difference", "left", "form"):
+        rows.add_column(head, justify="right", no_wrap=True)
+    scales = [_UNITS[case.component] for case in done.statics] + [(1.0, "Hz")] * len(done.modes)
+    for name, part, (factor, unit) in zip(_names(done), form_parts(done), scales, strict=True):
+        if part is None:
+            rows.add_row(name, *"-----")
+            continue
+        words = [f"{factor * value:.5g} {unit}" for value in (part.solver, part.theory)]
+        rows.add_row(name, *words, *(f"{share:+.2%}" for share in (part.difference, part.left, part.form)))
+    return rows
+
+
+def _names(done: Trial) -> list[str]:
+    modes = [f"mode {number}: {mode.kind}" for number, mode in enumerate(done.modes, start=1)]
+    return [*(case.name for case in done.statics), *modes]
 
 
 def _load_words(case: StaticCase) -> str:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from hashlib import sha256
 from pathlib import Path
 
@@ -16,7 +16,11 @@ from scipy.sparse.linalg import splu
 from skinmesh.beam.exact import exact_sections
 from skinmesh.beam.meshcut import mesh_sections, mesh_walls
 from skinmesh.beam.sections import SectionProperties
+from skinmesh.beam.walls import Walls, condense_laminates
+from skinmesh.beam.warping import properties_by_warping
+from skinmesh.definition.blade import COUNTER_CLOCKWISE
 from skinmesh.definition.read import load_blade
+from skinmesh.laminate.theory import laminate_stiffness, mass_moments
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.skin.unroll import unroll_skin
 from skinmesh.surface.loft import loft_surface
@@ -118,11 +122,8 @@ def make_beams(model: TrialModel, blade_file: Path | None) -> BeamSide:
         note = f"thin-wall laminate theory on the exact sections of {blade_file.name}"
         if blade.sources[0].sha256 != model.mesh.sources[0].sha256:
             note += ", which has changed since the mesh was built"
-    shear = shear_compliance(model.mesh, middle)
-    n_parts = -(-LEAST_BAYS // len(middle))
-    part = np.repeat(np.arange(len(middle)), n_parts)
-    share = np.arange(len(middle) * n_parts + 1) / n_parts
-    edges = np.interp(share, np.arange(len(z)), z)
+    shear = shear_compliance(mesh_walls(model.mesh, middle))
+    edges, part = _bays(z)
     return BeamSide(
         road=road,
         note=note,
@@ -137,8 +138,64 @@ def make_beams(model: TrialModel, blade_file: Path | None) -> BeamSide:
     )
 
 
-def shear_compliance(mesh: ShellMesh, z: Floats) -> Floats:
-    """Transverse shear strains of cuts through the mesh under unit forces in the shear centre.
+def held_beams(model: TrialModel) -> BeamSide:
+    """Make the beams of a model whose sections keep their form, wall by wall.
+
+    No wall strains round the section: its stiffness is A11 and A66 themselves, where the beam table has them free of
+    hoop force, A11 − A12² / A22 (Vlasov, Thin-Walled Elastic Beams, 1961, ch. 1: the assumption of a rigid contour;
+    from memory).
+
+    Parameters
+    ----------
+    model : TrialModel
+
+    Returns
+    -------
+    BeamSide
+        On the sections of the mesh; variants SHEARED, COUPLED and ALL.
+    """
+    _, z = model.row_ends
+    middle = 0.5 * (z[1:] + z[:-1])
+    walls = _held_walls(model.mesh, middle)
+    sections = properties_by_warping(middle, walls, is_mirrored=model.mesh.hand == COUNTER_CLOCKWISE)
+    shear = shear_compliance(walls)
+    edges, part = _bays(z)
+    own, slack = sections.take(part), shear[part]
+    return BeamSide(
+        road=MESH,
+        note="the sections of the mesh's own elements, their walls kept from straining round the section",
+        sections=sections,
+        plain=beam_bays(edges, own),
+        variants={
+            COUPLED: beam_bays(edges, own, is_coupled=True),
+            SHEARED: beam_bays(edges, own, shear=slack),
+            ALL: beam_bays(edges, own, shear=slack, is_coupled=True),
+        },
+    )
+
+
+def _held_walls(mesh: ShellMesh, z: Floats) -> Walls:
+    """Walls of cuts through the mesh that do not strain round the section."""
+    stiffness = laminate_stiffness(mesh.stacks)
+    A, B = stiffness.A.copy(), stiffness.B.copy()
+    # a hoop strain that acts on nothing else leaves nothing to take out with it
+    A[:, 1, [0, 2]] = A[:, [0, 2], 1] = 0.0
+    B[:, 1] = B[:, :, 1] = 0.0
+    walls = mesh_walls(mesh, z)
+    laminates = condense_laminates(A, B, stiffness.D, mass_moments(mesh.stacks))
+    return replace(walls, laminates=laminates.take(mesh.stack[walls.strip]))
+
+
+def _bays(z: Floats) -> tuple[Floats, Ints]:
+    """Ends of bays, enough for smooth modes, and the element row of each."""
+    n_rows = len(z) - 1
+    n_parts = -(-LEAST_BAYS // n_rows)
+    share = np.arange(n_rows * n_parts + 1) / n_parts
+    return np.interp(share, np.arange(len(z)), z), np.repeat(np.arange(n_rows), n_parts)
+
+
+def shear_compliance(walls: Walls) -> Floats:
+    """Transverse shear strains of sections under unit forces in the shear centre.
 
     The shear flow of each force follows from the growth of the axial force along the walls; its energy gives the mean
     strain (Timoshenko & Goodier, Theory of Elasticity; Cowper, Journal of Applied Mechanics 33, 1966, on what a mean
@@ -146,16 +203,14 @@ def shear_compliance(mesh: ShellMesh, z: Floats) -> Floats:
 
     Parameters
     ----------
-    mesh : ShellMesh
-    z : (m,) float array, m
+    walls : Walls
 
     Returns
     -------
     (m, 2, 2) float array, 1/N
         Strains along x and y under forces along x and y.
     """
-    walls = mesh_walls(mesh, z)
-    m, section = len(z), walls.section
+    m, section = walls.n_sections, walls.section
     length = np.linalg.norm(walls.step, axis=2)
     weight = walls.laminates.held[:, 0, 0, None] * length
     slack = length.sum(axis=1) / walls.laminates.shear

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -192,6 +192,8 @@ def compare_statics(
     loads: tuple[TrialLoad, ...],
     printed: Printed,
     motion: RigidMotion,
+    *,
+    tip: Floats,
 ) -> tuple[StaticCase, ...]:
     """Set the static answers beside theory.
 
@@ -205,12 +207,13 @@ def compare_statics(
     printed : Printed
     motion : RigidMotion
         Of the rings in every static step, then in every mode.
+    tip : (2,) float array, m
+        Where the tip loads act, and deflections are compared.
 
     Returns
     -------
     tuple of StaticCase
     """
-    tip = beams.tip_shear_centre
     place = np.array([*tip, beams.plain.z[-1]])
     root = rings.place[rings.ring == 0]
     refined = beams.variants[ALL]
@@ -303,9 +306,7 @@ def compare_modes(
     """
     bays = beams.plain
     found = motion.motion[n_static:]
-    # the solver's lines on the beam's nodes, its root held
-    on_beam = CubicSpline(rings.z, found, axis=1)(bays.z)
-    on_beam[:, 0] = 0.0
+    on_beam = _on_beam(bays, rings, found)
     beam_modes = natural_modes(bays, N_THEORY_MODES)
     kinds = kinds_of_motion(bays, beam_modes.motion).argmax(axis=1)
     likeness = _joined_likeness(modal_likeness(bays, on_beam, beam_modes.motion), beam_modes.frequency)
@@ -331,6 +332,37 @@ def compare_modes(
             )
         )
     return tuple(cases)
+
+
+def pair_modes(
+    bays: BeamBays, rings: Rings, modes: Sequence[ModeCase], others: Sequence[ModeCase]
+) -> tuple[int | None, ...]:
+    """For each mode of one run the mode of another run that is most like it.
+
+    Parameters
+    ----------
+    bays : BeamBays
+        Whose mass tells what is alike.
+    rings : Rings
+    modes, others : sequence of ModeCase
+        No fewer of the others.
+
+    Returns
+    -------
+    tuple of int or None
+        Places among the others; None where none of them is like it.
+    """
+    own, other = (_on_beam(bays, rings, np.stack([mode.line for mode in run])) for run in (modes, others))
+    likeness = modal_likeness(bays, own, other)
+    partner = linear_sum_assignment(-likeness)[1].tolist()
+    return tuple(j if likeness[k, j] >= ALIKE else None for k, j in enumerate(partner))
+
+
+def _on_beam(bays: BeamBays, rings: Rings, lines: Floats) -> Floats:
+    """Lines of the rings on the beam's nodes, the root held."""
+    on_beam = CubicSpline(rings.z, lines, axis=1)(bays.z)
+    on_beam[:, 0] = 0.0
+    return np.asarray(on_beam)
 
 
 def _joined_likeness(likeness: Floats, frequency: Floats) -> Floats:

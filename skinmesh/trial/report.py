@@ -16,6 +16,7 @@ from skinmesh.mesh.inner_face import node_normals
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.trial.beamside import ALL, COUPLED, MESH, SHEARED
 from skinmesh.trial.compare import ModeCase, StaticCase
+from skinmesh.trial.form import FormPart, form_parts, parting_by_form, place_of_parting
 from skinmesh.trial.run import Trial
 from skinmesh.version import __version__
 from skinmesh.write.deck_text import CAUTION
@@ -45,9 +46,11 @@ def failures(trial: Trial) -> tuple[str, ...]:
     tuple of str
         One sentence each; empty where all is well.
     """
+    runs = {"": trial.statics, ", sections kept in form": trial.held.statics if trial.held else ()}
     told = [
-        f"{case.name}: the reactions differ from the load by {case.imbalance:.2%} (limit {MOST_IMBALANCE:.1%})"
-        for case in trial.statics
+        f"{case.name}{words}: the reactions differ from the load by {case.imbalance:.2%} (limit {MOST_IMBALANCE:.1%})"
+        for words, cases in runs.items()
+        for case in cases
         if not case.imbalance <= MOST_IMBALANCE
     ]
     if abs(mass_difference(trial)) > MOST_MASS_DIFFERENCE:
@@ -98,7 +101,11 @@ def remarks(trial: Trial) -> tuple[str, ...]:
     tuple of str
     """
     cases: tuple[StaticCase | ModeCase, ...] = (*trial.statics, *trial.modes)
-    told = [_case_remark(case, trial.rings.z) for case in cases if _is_notable(case)]
+    parts = form_parts(trial) or (None,) * len(cases)
+    told = []
+    for k, (case, part) in enumerate(zip(cases, parts, strict=True)):
+        if _is_notable(case):
+            told.append(" ".join([_case_remark(case, trial.rings.z), *_form_remark(trial, k, case, part)]))
     told += [*_distortion_remarks(trial)]
     shells = [f"{mode.solver:.3f} Hz" for mode in trial.modes if mode.kind == "shell"]
     if shells:
@@ -151,7 +158,7 @@ def _case_remark(case: StaticCase | ModeCase, z: Floats) -> str:
     ]
     where = ""
     if isinstance(case, StaticCase) and abs(parts["left"]) > NOTABLE_LEFT:
-        low, high = place_of_difference(case, z)
+        low, high = place_of_parting(case.line_solver - case.line_refined, case.component, z)
         where = f" That arises at z = {low:.2f} to {high:.2f} m for the most part."
     if isinstance(case, ModeCase) and 1.0 - case.rigid_share > NOTABLE_SHARE:
         where = f" Of its squared motion {1.0 - case.rigid_share:.1%} is a change of the sections' form."
@@ -162,32 +169,25 @@ def _case_remark(case: StaticCase | ModeCase, z: Floats) -> str:
     )
 
 
-def place_of_difference(case: StaticCase, z: Floats) -> tuple[float, float]:
-    """Where the solver and the refined beam theory part.
-
-    Were the blade beyond a place as theory has it, the difference of displacement and rotation at that place alone
-    would make some difference at the tip. The two places are where that first comes to a tenth of the whole, and to
-    nine tenths for good.
-
-    Parameters
-    ----------
-    case : StaticCase
-    z : (r,) float array, m
-        Of the rings.
-
-    Returns
-    -------
-    low, high : float, m
-    """
-    parting = case.line_solver - case.line_refined
-    carried = parting[:, case.component].copy()
-    if case.component < 2:
-        slope = parting[:, 4] if case.component == 0 else -parting[:, 3]
-        carried += slope * (z[-1] - z)
-    share = carried / carried[-1]
-    low = int(np.argmax(share >= 0.1))
-    high = len(z) - int(np.argmax(share[::-1] < 0.9))
-    return float(z[max(low - 1, 0)]), float(z[min(high, len(z) - 1)])
+def _form_remark(trial: Trial, k: int, case: StaticCase | ModeCase, part: FormPart | None) -> list[str]:
+    """What the second run says of a difference."""
+    if trial.held is None:
+        return []
+    if part is None:
+        return ["No mode of the run with sections kept in form is like it."]
+    where = over = ""
+    if isinstance(case, StaticCase):
+        other, z = trial.held.statics[k], trial.rings.z
+        if abs(part.form) > NOTABLE_LEFT:
+            low, high = place_of_parting(parting_by_form(case, other), case.component, z)
+            where = f" (z = {low:.2f} to {high:.2f} m)"
+        if abs(part.left) > NOTABLE_LEFT:
+            low, high = place_of_parting(other.line_solver - other.line_refined, case.component, z)
+            over = f", at z = {low:.2f} to {high:.2f} m"
+    return [
+        f"Measured with sections that keep their form: their change of form makes {part.form:+.1%}{where}; what remains"
+        f" is {part.difference:+.1%} against Euler–Bernoulli theory, {part.left:+.1%} against refined theory{over}."
+    ]
 
 
 def _distortion_remarks(trial: Trial) -> list[str]:
@@ -237,6 +237,8 @@ def _knot_remark(mesh: ShellMesh) -> list[str]:
 
 def _document(trial: Trial) -> dict[str, Any]:
     model, run = trial.model, trial.run
+    n_static = len(trial.statics)
+    held = _form_held(trial)
     return {
         "title": model.mesh.title,
         "caution": " ".join(CAUTION),
@@ -257,6 +259,10 @@ def _document(trial: Trial) -> dict[str, Any]:
             " left: the solver beside theory with all of them",
             "ovalisation, warping": "root mean square of a ring's motion that no rigid motion explains, in the"
             " section's plane and across it, over the largest displacement",
+            "form_held": "the same in a second run whose sections keep their form, beside theory of walls that do not"
+            " strain round the section; form: what the sections' change of form makes different"
+            if trial.held
+            else "no such run was made (--hold-shape)",
         },
         "tip_loads_act_at_m": _numbers([*trial.tip, trial.beams.plain.z[-1]]),
         "mass_kg": {
@@ -265,8 +271,8 @@ def _document(trial: Trial) -> dict[str, Any]:
             "difference": _number(mass_difference(trial)),
         },
         "rings_z_m": _numbers(trial.rings.z),
-        "static": [_static(case) for case in trial.statics],
-        "modes": [_mode(case) for case in trial.modes],
+        "static": [_static(case) | more for case, more in zip(trial.statics, held[:n_static], strict=True)],
+        "modes": [_mode(case) | more for case, more in zip(trial.modes, held[n_static:], strict=True)],
         "failures": list(failures(trial)),
         "remarks": list(remarks(trial)),
     }
@@ -305,6 +311,26 @@ def _mode(case: ModeCase) -> dict[str, Any]:
         "rigid_share": _number(case.rigid_share),
         "line_solver": [_numbers(row) for row in case.line],
     }
+
+
+def _form_held(trial: Trial) -> list[dict[str, Any]]:
+    """Entries of the second run, one a load and mode; empty ones where there was none."""
+    parts = form_parts(trial)
+    if trial.held is None:
+        return [{}] * (len(trial.statics) + len(trial.modes))
+    entries: list[dict[str, Any]] = []
+    for k, part in enumerate(parts):
+        if part is None:
+            entries.append({"form_held": None})
+            continue
+        names = ("solver", "theory", "refined", "difference", "left", "form")
+        entry: dict[str, Any] = {name: _number(getattr(part, name)) for name in names}
+        if k < len(trial.statics):
+            entry["imbalance"] = _number(trial.held.statics[k].imbalance)
+            entry["line_solver"] = [_numbers(row) for row in trial.held.statics[k].line_solver]
+            entry["line_refined"] = [_numbers(row) for row in trial.held.statics[k].line_refined]
+        entries.append({"form_held": entry})
+    return entries
 
 
 def _number(value: float) -> float | None:
