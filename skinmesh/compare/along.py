@@ -30,16 +30,20 @@ class Along:
         Mass of each element row over its length; nought without plies.
     widths : mapping of str to (r,) float array, m
         Area of each region on each element row over the row's length: its mean width, a web's mean height.
+    stack_area : (s,) float array, m²
+        Of the elements that carry each stack.
     """
 
     planform: Planform
     ends: Floats
     mass: Floats
     widths: dict[str, Floats]
+    stack_area: Floats
 
     def __post_init__(self) -> None:
         freeze_array(self, "ends", shape=(None,))
         freeze_array(self, "mass", shape=(len(self.ends) - 1,))
+        freeze_array(self, "stack_area", shape=(None,))
 
     @property
     def middles(self) -> Floats:
@@ -87,7 +91,11 @@ def measured_along(mesh: ShellMesh) -> Along:
     by_region = np.bincount(mesh.region * n + row, weights=area, minlength=len(mesh.regions) * n).reshape(-1, n)
     mass = np.bincount(row, weights=area * mesh.areal_mass, minlength=n)
     widths = {region.name: own / length for region, own in zip(mesh.regions, by_region, strict=True) if own.any()}
-    return Along(planform(mesh), ends, mass / length, widths)
+    has_stack = mesh.stack >= 0
+    stack_area: Floats = np.bincount(mesh.stack[has_stack], weights=area[has_stack], minlength=len(mesh.stacks)).astype(
+        float
+    )
+    return Along(planform(mesh), ends, mass / length, widths, stack_area)
 
 
 @dataclass(frozen=True)

@@ -110,30 +110,30 @@ def stack_entries(old: ShellMesh, new: ShellMesh) -> tuple[Entry, ...]:
     return _entries(*tables, units={"thickness": "m", "areal mass": "kg/m²"})
 
 
-def ply_entries(old: BuiltMesh, new: BuiltMesh) -> tuple[Entry, ...]:
+def ply_entries(old: ShellMesh, new: ShellMesh, along: tuple[Along, Along]) -> tuple[Entry, ...]:
     """Plies of the schedule that came, went or changed: material, thickness, angle, layers, span, area and mass.
 
     Parameters
     ----------
-    old, new : BuiltMesh
+    old, new : ShellMesh
+    along : (Along, Along)
+        Of both.
 
     Returns
     -------
     tuple of Entry
     """
     units = {"thickness": "mm", "angle": "°", "from z": "m", "to z": "m", "layers' area": "m²", "mass": "kg"}
-    return _entries(_plies(old), _plies(new), units=units)
+    return _entries(_plies(old, along[0].stack_area), _plies(new, along[1].stack_area), units=units)
 
 
-def _plies(built: BuiltMesh) -> dict[str, dict[str, Any]]:
-    mesh = built.mesh
+def _plies(mesh: ShellMesh, area: Floats) -> dict[str, dict[str, Any]]:
     n = len(mesh.stacks)
     has_stack = mesh.stack >= 0
     z = mesh.points[mesh.cells[has_stack, : mesh.n_sides], 2]
     low, high = np.full(n, np.inf), np.full(n, -np.inf)
     np.minimum.at(low, mesh.stack[has_stack], z.min(axis=1))
     np.maximum.at(high, mesh.stack[has_stack], z.max(axis=1))
-    area = [float(stack["area_m2"]) for stack in built.summary["stacks"]]
     found: dict[str, dict[str, Any]] = {}
     for name, layers in _layers_by_ply(mesh).items():
         stacks = [k for k, _ in layers if np.isfinite(low[k])]

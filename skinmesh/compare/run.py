@@ -160,7 +160,7 @@ def compare_meshes(old: BuiltMesh, new: BuiltMesh, *, progress: Progress | None 
         stations=compare_stations(old.summary, new.summary),
         whole=whole_values(old.summary, new.summary),
         regions=region_entries(old, new, along),
-        plies=ply_entries(old, new),
+        plies=ply_entries(old.mesh, new.mesh, along),
         stacks=stack_entries(old.mesh, new.mesh),
         materials=material_entries(old.summary, new.summary),
         settings=setting_values(old.summary, new.summary),

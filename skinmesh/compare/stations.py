@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from math import isclose
-from typing import Any
+from typing import Any, TypeGuard
 
 from skinmesh.compare.values import CHANGED, GONE, NEW, Entry, Value
 
@@ -86,7 +86,7 @@ def compare_stations(old: Mapping[str, Any], new: Mapping[str, Any]) -> StationC
     StationChange
     """
     before, after = old.get("stations"), new.get("stations")
-    if not isinstance(before, list) or not isinstance(after, list):
+    if not (_is_table(before) and _is_table(after)):
         return StationChange(False, (), ())
     pairs = _pairs(before, after)
     entries = []
@@ -105,6 +105,12 @@ def compare_stations(old: Mapping[str, Any], new: Mapping[str, Any]) -> StationC
             entries.append(entry)
     columns = [_column(name, unit, shared) for name, unit in COLUMNS.values()]
     return StationChange(True, tuple(column for column in columns if column is not None), tuple(entries))
+
+
+def _is_table(stations: Any) -> TypeGuard[list[Mapping[str, Any]]]:
+    return isinstance(stations, list) and all(
+        isinstance(station, Mapping) and isinstance(station.get("z_m"), float | int) for station in stations
+    )
 
 
 def _pairs(

@@ -18,6 +18,8 @@ Floats = NDArray[np.float64]
 
 _OLD, _NEW = QUIET, AXIS_COLOURS[1]
 _BINS = 60
+_LEAST_MOVE = 1e-3
+"""Move that the scale shows at least, m, so that what the coarser mesh cannot resolve is not drawn large."""
 
 
 def diff_plot(difference: MeshDifference, path: Path) -> None:
@@ -35,7 +37,9 @@ def diff_plot(difference: MeshDifference, path: Path) -> None:
     """
     page = Page(HEIGHT)
     page.text(MARGIN, 40, difference.new.mesh.title, size=26)
-    page.text(MARGIN, 78, "What changed along the span. Dashed grey: old. Blue: new.", colour=QUIET)
+    names = [built.directory.resolve().name for built in (difference.old, difference.new)]
+    words = f"What changed along the span. Dashed grey: {names[0]}. Blue: {names[1]}."
+    page.text(MARGIN, 78, words, colour=QUIET)
     old, new = difference.along
     forms = old.planform, new.planform
     z = float(min(old.ends[0], new.ends[0])), float(max(old.ends[-1], new.ends[-1]))
@@ -79,7 +83,7 @@ def _moves(axes: Any, difference: MeshDifference) -> None:
         axes.plot(*_envelope(nodes), color=_NEW, linewidth=1.4, label=label)
         largest = max(largest, nodes.largest)
     axes.plot(*_envelope(shape), color=AXIS_COLOURS[0], linewidth=1.4, label="skin as a shape")
-    axes.set_ylim(0.0, 1.15e3 * max(largest, 1e-6))
+    axes.set_ylim(0.0, 1.15e3 * max(largest, _LEAST_MOVE))
     axes.legend(frameon=False, fontsize=10)
 
 
