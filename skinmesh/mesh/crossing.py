@@ -13,16 +13,20 @@ from skinmesh.skin.kept import MatchedLines, match_lines
 
 Floats = NDArray[np.float64]
 
+Block = tuple[tuple[int, int], tuple[int, int]]
+"""Two matched lines that follow each other: (old, new) index of each."""
+
 _SAME_STATION = 1e-6  # of the blade's length
+_ALIKE = 0.02  # of a cell: divisions that lie so near each other are the same
 
 
 class Crossing:
     """Carries parametric coordinates from one lattice to another.
 
     Rows and seams are matched by name: a web more or less shifts the integers, not the names. Stations are matched by
-    number where both blades have equally many, else by z, or by the share of the length. Between two matched lines that
-    are neighbours in both meshes the coordinates are those of before; where a line lies between them in one mesh only,
-    a place is carried by its share of the way along z, or along the arc.
+    number where both blades have equally many, else by z, or by the share of the length. Between two matched lines a
+    place is carried by its share of the way, along z or along the arc; where lines and divisions are those of before,
+    its coordinates stay, as in a rebuild that keeps numbers.
 
     Parameters
     ----------
@@ -35,18 +39,27 @@ class Crossing:
 
     def __init__(self, old: Lattice, new: Lattice) -> None:
         self.old, self.new = old, new
-        self.matched_rows = rows = match_lines(*_row_names(old.mesh, new.mesh))
+        is_same = _is_same_lattice(old, new)
+        self.matched_rows = rows = match_lines(*_row_names(old.mesh, new.mesh, with_base=is_same))
         self.matched_seams = seams = match_lines(
             *([_seam_names(label) for label in mesh.report.seams] for mesh in (old.mesh, new.mesh))
         )
         grids = old.skin_points(), new.skin_points()
-        self._row_table = _row_table(old, new, rows, [grid[..., 2].mean(axis=1) for grid in grids])
-        self._blocks = list(zip(seams.pairs[:-1], seams.pairs[1:], strict=True))
+        lines = old.charts[SKIN].rows, new.charts[SKIN].rows
+        self._row_table = _row_table(lines, rows, [grid[..., 2].mean(axis=1) for grid in grids], is_same=is_same)
         self._arcs = [
             np.concatenate(
                 [np.zeros((len(grid), 1)), np.cumsum(np.linalg.norm(np.diff(grid, axis=1), axis=2), axis=1)], axis=1
             )
             for grid in grids
+        ]
+        self._blocks = list(zip(seams.pairs[:-1], seams.pairs[1:], strict=True))
+        lines = old.charts[SKIN].seams, new.charts[SKIN].seams
+        arcs = [arc.mean(axis=0) for arc in self._arcs]
+        self._moved = [
+            block
+            for block in self._blocks
+            if not (is_same or _is_divided_alike(block, _block_shares(lines, arcs, block)))
         ]
 
     @property
@@ -71,16 +84,15 @@ class Crossing:
             return np.tile(lines, (len(row), 1))
         direct = np.interp(lines, *np.array([end for block in self._blocks for end in block], dtype=float).T)
         table = np.tile(direct, (len(row), 1))
-        moved = [(a, b) for a, b in self._blocks if (b[0] - a[0], b[1] - a[1]) != (1, 1)]
-        if not moved:
-            return table
         new_lines = self.new.charts[SKIN].seams
+        if not self._moved:
+            return table
         for k, (before, now) in enumerate(zip(row, self.rows(row), strict=True)):
             arc, new_arc = (
                 _between(lattice.charts[SKIN].rows, arcs, at)
                 for lattice, arcs, at in zip((self.old, self.new), self._arcs, (before, now), strict=True)
             )
-            for a, b in moved:
+            for a, b in self._moved:
                 own = (lines >= a[0]) & (lines <= b[0])
                 ends, new_ends = np.interp((a[0], b[0]), lines, arc), np.interp((a[1], b[1]), new_lines, new_arc)
                 share = (arc[own] - ends[0]) / (ends[1] - ends[0])
@@ -104,34 +116,53 @@ def _between(lines: Floats, values: Floats, at: float) -> Floats:
     return np.asarray((1.0 - u) * values[i] + u * values[i + 1])
 
 
-def _row_table(old: Lattice, new: Lattice, rows: MatchedLines, z: list[Floats]) -> tuple[Floats, Floats]:
+def _is_same_lattice(old: Lattice, new: Lattice) -> bool:
+    """Whether rows, seams and divisions are the same, as after a rebuild that kept numbers."""
+    labels = [([label for label, _ in mesh.report.rows], mesh.report.seams) for mesh in (old.mesh, new.mesh)]
+    return labels[0] == labels[1] and all(
+        np.array_equal(getattr(old.charts[SKIN], kind), getattr(new.charts[SKIN], kind)) for kind in ("rows", "seams")
+    )
+
+
+def _block_shares(lines: tuple[Floats, Floats], along: list[Floats], block: Block) -> list[Floats]:
+    """Shares of the way from one matched line to the next at all lines of both lattices between them."""
+    shares = []
+    for x, values, low, high in zip(lines, along, *block, strict=True):
+        start, end = np.interp((low, high), x, values)
+        shares.append((values[(x >= low) & (x <= high)] - start) / (end - start))
+    return shares
+
+
+def _is_divided_alike(block: Block, shares: list[Floats]) -> bool:
+    """Whether the lines between neighbours lie at the same shares of the way, but for a small part of a cell."""
+    (a, c), (b, d) = block
+    n = [len(own) for own in shares]
+    return (b - a, d - c) == (1, 1) and n[0] == n[1] and bool(np.abs(shares[0] - shares[1]).max() * n[0] < _ALIKE)
+
+
+def _row_table(
+    lines: tuple[Floats, Floats], rows: MatchedLines, z: list[Floats], *, is_same: bool
+) -> tuple[Floats, Floats]:
     """Old row coordinates, and the new ones of the same places, straight between."""
-    before, now = old.charts[SKIN].rows, new.charts[SKIN].rows
     parts = []
-    for (a, c), (b, d) in zip(rows.pairs[:-1], rows.pairs[1:], strict=True):
-        if (b - a, d - c) == (1, 1):
+    for block in zip(rows.pairs[:-1], rows.pairs[1:], strict=True):
+        (a, c), (b, d) = block
+        shares = _block_shares(lines, z, block)
+        if is_same or _is_divided_alike(block, shares):
             parts.append(np.array([[a, b], [c, d]], dtype=float))
             continue
-        share = [
-            (np.interp(lines[(lines >= low) & (lines <= high)], lines, along) - np.interp(low, lines, along))
-            / (np.interp(high, lines, along) - np.interp(low, lines, along))
-            for lines, along, low, high in ((before, z[0], a, b), (now, z[1], c, d))
-        ]
-        shares = np.union1d(*share)
-        parts.append(
-            np.array(
-                [
-                    np.interp(shares, own, lines[(lines >= low) & (lines <= high)])
-                    for own, lines, low, high in ((share[0], before, a, b), (share[1], now, c, d))
-                ]
-            )
-        )
+        own = [x[(x >= low) & (x <= high)] for x, low, high in zip(lines, *block, strict=True)]
+        every = np.union1d(*shares)
+        parts.append(np.array([np.interp(every, share, x) for share, x in zip(shares, own, strict=True)]))
     table = np.concatenate(parts, axis=1)
     return table[0], table[1]
 
 
-def _row_names(old: ShellMesh, new: ShellMesh) -> tuple[list[list[str]], list[list[str]]]:
-    """Names of all rows; a reason that stands twice gets a number, and stations names that both meshes share."""
+def _row_names(old: ShellMesh, new: ShellMesh, *, with_base: bool) -> tuple[list[list[str]], list[list[str]]]:
+    """Names of all rows; a reason that stands twice gets a number, and stations names that both meshes share.
+
+    Where the trailing base runs out depends on the element size too, so that its ends are no places of the blade.
+    """
     names: tuple[list[list[str]], list[list[str]]] = ([], [])
     pairs = dict(_same_stations(old.report.stations, new.report.stations))
     shared = {f"station {j:02d}": f"station {i:02d}" for i, j in pairs.items()}
@@ -140,6 +171,8 @@ def _row_names(old: ShellMesh, new: ShellMesh) -> tuple[list[list[str]], list[li
         for label, _ in mesh.report.rows:
             parts = []
             for part in label.split(" + "):
+                if part.startswith(f"{BASE} ") and not with_base:
+                    continue
                 seen[part] += 1
                 name = part if seen[part] == 1 else f"{part} ({seen[part]})"
                 if part.startswith("station ") and mesh is new:

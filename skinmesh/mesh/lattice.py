@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from skinmesh.definition.blade import SUCTION
 from skinmesh.mesh.shellmesh import ShellMesh
 
 Floats = NDArray[np.float64]
@@ -200,10 +201,9 @@ def _own_seams(mesh: ShellMesh, corners: Ints) -> Floats:
             values = np.where(at_foot, np.where(suction[corners[own]], 1.0, 0.0), values)
         elif region.kind == "base":
             values = np.where(values == 0.0, last + 1.0, values)
-        else:
-            # an element at a closed edge, which is seam 0, belongs to the last gap if it has nodes there
-            wraps = np.max(values, axis=1) > last - 1.0 + SAME_PLACE
-            values = np.where(wraps[:, None] & (values == 0.0), last, values)
+        elif region.side == SUCTION:
+            # where the edges are closed they have the pressure side's seam, 0
+            values = np.where(values == 0.0, last, values)
         seam[own] = values
     return seam
 
