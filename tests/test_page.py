@@ -27,9 +27,11 @@ from skinmesh.commands.page_command import page
 from skinmesh.errors import InputError
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
-from skinmesh.page.document import embedded_json
+from skinmesh.page import document
+from skinmesh.page.document import SCRIPTS, embedded_json
 from skinmesh.page.gather import gather_arrays, gather_words
 from skinmesh.page.packing import pack_arrays
+from skinmesh.page.plies import ply_table
 from skinmesh.page.spanwise import beam_along, shape_along
 from skinmesh.page.write import write_page
 from skinmesh.show.develop import develop
@@ -176,6 +178,34 @@ def test_parts_keep_the_colours_of_the_pictures_and_materials_take_none_of_them(
     colours = part_colours(built.mesh.regions)
     assert {region["part"]: region["colour"] for region in words["regions"]} == colours
     assert not set(MATERIAL_TONES) & set(colours.values())
+
+
+@pytest.mark.parametrize("hand", ["clockwise", "counter-clockwise"])
+def test_the_table_of_plies_adds_up_to_the_mesh(hand: str) -> None:
+    mesh = skinmesh.build(replace(demonstration(), hand=hand))
+    table = {line["ply"]: line for line in ply_table(mesh)}
+    areas = element_areas(mesh)
+    assert sum(line["mass"] for line in table.values()) == pytest.approx(float(areas @ mesh.areal_mass), rel=1e-12)
+    z = mesh.points[mesh.cells[:, : mesh.n_sides], 2]
+    for ply, line in table.items():
+        counts = np.array([sum(layer.ply == ply for layer in stack.layers) for stack in mesh.stacks])[mesh.stack]
+        assert line["area"] == pytest.approx(float(areas @ counts), rel=1e-12)
+        assert line["layers"] == [counts[counts > 0].min(), counts.max()]
+        assert line["z"] == [z[counts > 0].min(), z[counts > 0].max()]
+        names = {mesh.regions[k].name for k in np.unique(mesh.region[counts > 0])}
+        told = {f"{side}{name}" for name in line["regions"] for side in ("", "suction ", "pressure ")}
+        assert names <= told
+        assert len(line["regions"]) <= len(names)
+        angles = {layer.angle_degrees for stack in mesh.stacks for layer in stack.layers if layer.ply == ply}
+        assert line["angles"] == sorted(angles)
+
+
+def test_the_page_keeps_to_the_public_parts_of_its_library() -> None:
+    assets = Path(document.__file__).parent / "assets"
+    for name in SCRIPTS:
+        text = (assets / name).read_text(encoding="utf-8")
+        assert not re.search(r"\w\??\._\w", text), name
+        assert text.count("\n") < 400, name
 
 
 def test_checks_are_read_where_fresh_and_made_where_stale(hostile: Path) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import base64
 import csv
 import json
 import re
@@ -345,6 +346,74 @@ def test_a_wall_of_the_cut_and_a_check_lead_to_the_element(example: Path, open_p
     assert link is not None
     press(driver, "#check-table a.el")
     assert driver.execute_script("return document.querySelector('#picked dd').textContent") == link
+
+
+def test_the_root_is_on_the_left_in_every_view_from_the_side(example: Path, open_page: OpenPage) -> None:
+    driver = open_page(example)
+    mesh = read_built_mesh(example.parent).mesh
+    middle = mesh.points[mesh.cells[:, : mesh.n_sides], 2].mean(axis=1)
+    find = (
+        "const box = document.getElementById('view').getBoundingClientRect(), found = [];"
+        "for (let k = 0; k < 36; k++) {"
+        "  const x = box.left + box.width * (arguments[0] + 0.03 * (k % 3));"
+        "  const e = skinmeshPage.viewer.pickAt(x, box.top + box.height * (0.44 + 0.01 * Math.floor(k / 3)));"
+        "  if (e >= 0) found.push(e);"
+        "} return found"
+    )
+    for view in ("suction", "pressure", "leading", "trailing"):
+        press(driver, f"[data-view={view}]")
+        left, right = (driver.execute_script(find, share) for share in (0.1, 0.7))
+        assert middle[left].max() < middle[right].min(), view
+        caption = driver.execute_script("skinmeshPage.viewer.draw(); return compass.textContent")
+        assert caption.startswith(view.capitalize())
+        assert caption.endswith("root on the left")
+
+
+def test_the_angle_of_a_ply_is_told_with_its_sign(example: Path, open_page: OpenPage) -> None:
+    driver = open_page(example)
+    mesh = read_built_mesh(example.parent).mesh
+    plies = driver.execute_script("return skinmeshPage.words.plies")
+    sign = "\u2212" if mesh.hand == "counter-clockwise" else "+"
+    for ply, angle in (("outer skin", f"{sign}45\u00b0"), ("cap", "0\u00b0")):
+        choose(driver, "colour-by", "angle")
+        choose(driver, "ply", str(plies.index(ply)))
+        assert driver.execute_script("return skinmeshPage.viewer.state.by") == "angle"
+        has_it = np.array([any(layer.ply == ply for layer in stack.layers) for stack in mesh.stacks])[mesh.stack]
+        told = driver.execute_script(
+            "return [...document.querySelectorAll('#legend span:not(.swatch)')].map((s) => s.textContent)"
+        )
+        told = [words.replace("\u202f", "").strip() for words in told]
+        assert f"{angle} on {has_it.sum()} elements" in told
+        cells = driver.execute_script(
+            "return [...document.querySelectorAll('table.plies tbody tr')].map((row) =>"
+            " [row.cells[0], row.cells[2]].map((cell) => cell.textContent.trim()))"
+        )
+        assert [told for name, told in cells if name == ply] == [angle]
+
+
+def test_paper_shows_both_sides_and_the_skin_in_light_colours(example: Path, open_page: OpenPage) -> None:
+    driver = open_page(example, dark=True)
+    press(driver, "[data-view=oblique]")
+    before = picture(driver)
+    # Runs after the page's own: shares of white and of the cap's orange in every picture.
+    driver.execute_script(
+        "addEventListener('beforeprint', () => { window.printed = [...document.querySelectorAll('#stills figure')].map("
+        "(figure) => { const c = figure.firstChild; let white = 0, orange = 0;"
+        "  const p = c.getContext('2d').getImageData(0, 0, c.width, c.height).data;"
+        "  for (let k = 0; k < p.length; k += 4) {"
+        "    if (p[k] + p[k + 1] + p[k + 2] === 765) white++;"
+        "    if (p[k] > 1.8 * p[k + 1] && p[k + 1] > 2 * p[k + 2]) orange++; }"
+        "  return [figure.textContent, white / p.length * 4, orange / p.length * 4]; }); })"
+    )
+    pdf = base64.b64decode(driver.execute_cdp_cmd("Page.printToPDF", {"printBackground": False})["data"])
+    assert len(re.findall(rb"/Type\s*/Page\b", pdf)) <= 14
+    printed = driver.execute_script("return window.printed")
+    assert [words.split(":")[0] for words, _, _ in printed] == ["Suction side", "Pressure side", "Developed skin"]
+    for words, white, cap in printed:
+        assert 0.2 < white < 0.95, words
+        assert cap > 0.02, words
+    assert driver.execute_script("return document.getElementById('stills').childElementCount") == 0
+    assert picture(driver) == before
 
 
 @pytest.mark.slow

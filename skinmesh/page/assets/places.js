@@ -88,16 +88,14 @@ function makePlaces(mesh) {
     return new Float32Array(ends);
   }
 
-  // Names beside the parts of the developed skin, and numbers of the stations, as [words, y, z, kind].
+  // Names of the webs beside the developed skin, and numbers of the stations, as [words, y, z, kind].
   function flatNames() {
-    const [least, most] = words.skin_arc;
-    const aft = now.box.high[2] - 0.16 * (now.box.high[2] - now.box.low[2]);
+    const [least] = words.skin_arc;
     const numbers = words.stations.map((z, k) => {
       const edge = words.seams.length ? arcAt(words.seams[0].line, z) : least;
       return [String(k).padStart(2, "0"), across * edge, z, "station"];
     });
     return [
-      ["pressure side", across * 0.9 * least, aft, ""], ["suction side", across * 0.9 * most, aft, ""],
       ...Object.entries(webStart).map(([k, start]) => [regionName(+k), across * (start - 0.3 * gap), now.box.low[2], ""]),
       ...numbers,
     ];

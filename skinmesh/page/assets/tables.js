@@ -15,9 +15,12 @@ const fromTo = ([low, high], digits = 6) => (low === high ? `${+low.toPrecision(
 function showPlies(choose) {
   const rows = words.ply_table.map((one) => [
     make("a", { class: "el", href: "#blade", onclick: () => choose(words.plies.indexOf(one.ply)) }, one.ply), one.materials.join(", "),
-    one.angles.map(degrees).join(", "), fromTo(one.thickness.map((t) => 1e3 * t)), fromTo(one.layers), one.regions.join(", "),
+    make("span", {}, ...one.angles.flatMap((a) => [swatch(`rgb(${toneOfAngle([a]).join(" ")})`), ` ${degrees(a)} `])), fromTo(one.thickness.map((t) => 1e3 * t)), fromTo(one.layers), one.regions.join(", "),
     fixed(one.z[0]), fixed(one.z[1]), significant(one.area), significant(one.mass),
   ]);
+  if (words.hand === "counter-clockwise" && rows.length) {
+    byId("ply-hand").textContent = "This blade is counter-clockwise: its laminate is mirrored, and angles have the other sign than in the blade file.";
+  }
   byId("ply-table").replaceChildren(rows.length
     ? table(["ply", "material", "angle", "a layer, mm", "layers", "regions", "from z m", "to z m", "area m²", "kg"], rows, { numeric: [3, 4, 6, 7, 8, 9], name: "plies" })
     : make("p", {}, "The blade file has no plies."));
