@@ -41,7 +41,7 @@ def watch(order: BuildOrder, *, first: ShellMesh | None) -> None:
     """
     last, good = first, None
     tried: Contents = {order.blade_file: ""}
-    told: list[Path] = []
+    told, mistakes = list[Path](), ""
     console = Console(highlight=False, markup=False, emoji=False)
     try:
         while True:
@@ -53,9 +53,12 @@ def watch(order: BuildOrder, *, first: ShellMesh | None) -> None:
                     built = build_files(order, stages, keep=keep, or_fresh=or_fresh)
             except SkinmeshError as error:
                 stays = "nothing was written" if good is None else "the last good mesh stays"
-                click.echo(printable(f"{_clock()} not built, {stays}:\n{error}"), err=True)
-                tried = {**found, **_named_in(error, order.blade_file)}
+                if str(error) != mistakes:
+                    mistakes = str(error)
+                    click.echo(printable(f"{_clock()} not built, {stays}:\n{mistakes}"), err=True)
+                tried = {**_named_in(error, order.blade_file), **found}
             else:
+                mistakes = ""
                 seconds = perf_counter() - start
                 if good is None:
                     print_closing(
@@ -204,8 +207,6 @@ def _inputs(blade_file: Path, mesh: ShellMesh) -> Contents:
 
 
 def _named_in(error: SkinmeshError, blade_file: Path) -> Contents:
-    """Files in which mistakes were found, for they may not have been watched yet."""
+    """Files in which mistakes were found, as if they had not been there: one that is new to us is tried once more."""
     problems = error.problems if isinstance(error, InputError) else ()
-    named = {Path(problem.file).name: problem.file for problem in problems}
-    named.pop(blade_file.name, None)
-    return {(path := blade_file.parent / file): _content(path) for file in named.values()}
+    return {blade_file.parent / problem.file: "" for problem in problems if Path(problem.file) != blade_file}
