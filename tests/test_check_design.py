@@ -149,12 +149,12 @@ MISTAKES: dict[str, tuple[Change, dict[str, str], tuple[str, ...]]] = {
     "-45/-45 on the webs": (
         with_ply("web plus", angle=np.radians(-45.0)),
         {"balance": WARN},
-        ("0.00 mm at +45°, 2.00 mm at -45° ('web plus', 'web minus'); fore web, aft web, z = 1.2",),
+        ("0.00 mm at +45°, 2.00 mm at -45° ('web plus', 'web minus'); z = 1.200 to 20.000 m, on fore web, aft web",),
     ),
     "a cap turned by 10°": (
         with_ply("cap", angle=np.radians(10.0)),
         {"balance": WARN},
-        ("mm at +10°, 0.00 mm at -10° ('cap'); suction main cap, pressure main cap",),
+        ("mm at +10°, 0.00 mm at -10° ('cap'); z = ", " m, on suction main cap, pressure main cap"),
     ),
     "a cap across the blade": (
         with_ply("cap", angle=np.radians(90.0)),
@@ -177,7 +177,7 @@ MISTAKES: dict[str, tuple[Change, dict[str, str], tuple[str, ...]]] = {
             lambda blade: replace(blade, plies=(ply("coat", 0.0002, 0, "skin"), *blade.plies)),
         ),
         {"weak laminates": WARN, "slender panels": WARN},
-        ("0.20 mm of 'coat'; suction leading strip",),
+        ("0.20 mm of 'coat'; z = 21.",),
     ),
     "a web that ends over a panel without core": (
         web_to_the_panel,

@@ -84,12 +84,12 @@ def place_of(mesh: ShellMesh, element: int) -> str:
 
 
 def regions_of(mesh: ShellMesh, elements: NDArray[np.int64]) -> str:
-    """Regions and range of z of some elements; empty where there are none."""
+    """Range of z and regions of some elements; empty where there are none."""
     if not len(elements):
         return ""
     z = mesh.points[mesh.cells[elements, : mesh.n_sides], 2]
     regions = listed((mesh.regions[i].name for i in np.unique(mesh.region[elements])), most=4)
-    return f"{regions}, z = {z.min():.3f} to {z.max():.3f} m"
+    return f"z = {z.min():.3f} to {z.max():.3f} m, on {regions}"
 
 
 def span_of(mesh: ShellMesh, elements: NDArray[np.int64]) -> str:

@@ -67,6 +67,7 @@ DEFAULT_LIMITS: Mapping[str, Limit] = {
     "chord and twist": Limit(0.01, 0.05, OWN),
     "area against flat pattern": Limit(0.02, 0.1, OWN),
     "ply area": Limit(0.05, 0.25, OWN),
+    "ply end move": Limit(0.005, float("inf"), OWN),
     "layers ended at once": Limit(4.0, float("inf"), COMMON),
     "taper": Limit(0.1, float("inf"), COMMON),
     "dip of a material": Limit(0.15, float("inf"), OWN),

@@ -44,6 +44,7 @@ def check_plies(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
             "stacks across regions",
             "ply order",
             "ply areas",
+            "ply ends",
             "offset",
         )
         return [not_made(name, NO_PLIES) for name in names]
@@ -54,6 +55,7 @@ def check_plies(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
         _across(mesh, table),
         _order(mesh, table),
         _areas(mesh, table, limits["ply area"]),
+        _ends(mesh, table, limits["ply end move"]),
         _offset(mesh),
     ]
 
@@ -217,6 +219,20 @@ def _areas(mesh: ShellMesh, table: SpanTable, limit: Limit) -> Finding:
                 for name, a, b in zip(table.plies, laid, wanted, strict=True)
             ]
         },
+    )
+
+
+def _ends(mesh: ShellMesh, table: SpanTable, limit: Limit) -> Finding:
+    """How far ends of plies went to meet a row of elements, as a share of the blade's length."""
+    move = mesh.report.ply_end_move
+    share = move / max(float(np.ptp(table.z)), 1e-30)
+    return Finding(
+        "ply ends",
+        f"ply ends moved to element rows by {move:.3f} m at most, {share:.4f} of the blade's length",
+        limit.text,
+        f"{limit.source}; a smaller mesh size, or cut_at_ply_ends, moves them less",
+        verdict_of(fails=share > limit.fail, warns=share > limit.warn),
+        mesh.report.ply_end_place,
     )
 
 

@@ -17,7 +17,7 @@ from skinmesh.commands.stages import shown_stages
 
 CHECK_FAILED = 1
 PIPE_WIDTH = 160
-LONGEST_LINE = 190
+LONGEST_LINE = 240
 """Letters of a line of the list of what to look at first; the table has all."""
 COLOURS = {PASS: "green", WARN: "yellow", FAIL: "bold red", NOT_MADE: "dim"}
 
