@@ -149,7 +149,11 @@ def _map(page: Page, place: int, title: str, rows: tuple[Row, ...], swept: tuple
 
 
 def _digits(low: float, high: float) -> int:
-    """Decimals that tell the values of a range apart, three or more digits of it."""
+    """Decimals that tell the values of a range apart; three significant digits where they are all one.
+
+    >>> _digits(1724.0, 1808.0), _digits(1.757, 1.848), _digits(0.049781, 0.049781)
+    (0, 3, 4)
+    """
     size = max(abs(low), abs(high), 1e-300)
-    step = max((high - low) / 20.0, size * 1e-4)
+    step = max((high - low) / 20.0, size * 1e-4) if high > low else size * 5e-3
     return int(np.clip(np.ceil(-np.log10(step)), 0, 6))

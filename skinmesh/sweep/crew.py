@@ -18,6 +18,8 @@ PATIENCE = 20
 """Seconds to wait for a scheduler to answer, and for its first worker."""
 AHEAD = 2
 """Variants a worker is given beforehand, so that it never waits."""
+_DEAF = "import signal; signal.signal(signal.SIGINT, signal.SIG_IGN)"
+"""What a worker on this machine runs first: Ctrl-C reaches the whole terminal, but ending workers is the client's."""
 INSTALL = "pip install 'skinmesh[sweep]'"
 Job = tuple[str, tuple[Any, ...]]
 
@@ -70,7 +72,9 @@ def open_crew(*, workers: int | None = None, scheduler: str | None = None) -> It
                     n_workers=workers or os.cpu_count() or 1,
                     threads_per_worker=1,
                     processes=True,
-                    dashboard_address=None,
+                    # a free port of the loopback address: without one it takes 8787, and complains where that is taken
+                    scheduler_kwargs={"dashboard": False, "dashboard_address": "127.0.0.1:0"},
+                    preload=[_DEAF],
                     silence_logs=logging.CRITICAL,
                 )
             )
