@@ -13,7 +13,7 @@ import pytest
 from skinmesh.check.drops import check_drops
 from skinmesh.check.finding import FAIL, PASS, WARN, Finding
 from skinmesh.check.laminates import check_laminates, unpaired_plies
-from skinmesh.check.limits import DEFAULT_LIMITS
+from skinmesh.check.limits import DEFAULT_LIMITS, Limit
 from skinmesh.check.notches import check_notches
 from skinmesh.check.plies import check_plies
 from skinmesh.check.slender import check_slenderness
@@ -25,6 +25,9 @@ from skinmesh.laminate.stack import Layer, Stack
 from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
+
+# The meshes here are coarse to be quick, and ply ends go far to meet their rows.
+LIMITS = {**DEFAULT_LIMITS, "ply end move": Limit(0.05, np.inf, "a mesh for tests")}
 
 Change = Callable[[BladeDefinition], BladeDefinition]
 
@@ -69,8 +72,8 @@ def sound_mesh() -> ShellMesh:
 def findings(mesh: ShellMesh) -> list[Finding]:
     table = span_table(mesh)
     checks = (check_plies, check_drops, check_notches, check_laminates, check_slenderness)
-    found = [finding for check in checks for finding in check(mesh, table, limits=DEFAULT_LIMITS)]
-    return [*found, *check_web_ends(mesh, limits=DEFAULT_LIMITS)]
+    found = [finding for check in checks for finding in check(mesh, table, limits=LIMITS)]
+    return [*found, *check_web_ends(mesh, limits=LIMITS)]
 
 
 def with_ply(name: str, **changes: object) -> Change:
@@ -244,3 +247,17 @@ def test_plies_without_a_counterpart() -> None:
     layers = [Layer(f"ply {k}", blades.GLASS, 0.001, np.radians(angle)) for k, angle in enumerate((0, 30, 30, -30, 90))]
     assert unpaired_plies(Stack(tuple(layers))) == "2.00 mm at +30°, 1.00 mm at -30° ('ply 1', 'ply 2', 'ply 3')"
     assert unpaired_plies(Stack((layers[0],))) == ""
+
+
+@pytest.mark.parametrize(("end", "verdict"), [(10.0, PASS), (10.15, WARN)])
+def test_ply_ends_that_move_far_are_named(end: float, verdict: str) -> None:
+    """Rows 0.4 m apart, ends at a row or between two: 0.15 m of 20 m is 0.0075."""
+    table = blades.stations([0.0, 20.0], [1.0, 1.0], ["ring", "ring"])
+    plies = (blades.skin_ply(), ply("patch", 0.001, 0, "skin", span=(0.0, end)))
+    mesh = build_mesh(
+        blades.blade(table, {"ring": sound().profiles["ring"]}, plies=plies, mesh=blades.rule(0.4, order=1))
+    )
+    (line,) = [f for f in check_plies(mesh, span_table(mesh), limits=DEFAULT_LIMITS) if f.check == "ply ends"]
+    assert line.verdict == verdict
+    assert f"by {end - 10.0:.3f} m at most, {(end - 10.0) / 20.0:.4f} of the blade's length" in line.measured
+    assert verdict == PASS or line.where == "ply 'patch', layer 1, tip end at z = 10.150 m"
