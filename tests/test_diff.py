@@ -231,6 +231,7 @@ def test_numbers_sets_and_regions(tmp_path):
     assert "node sets of other nodes: tip" in fewer.numbering.sentence
     turned = compared(mesh, replace(mesh, cells=np.roll(mesh.cells, 1, axis=0)), tmp_path / "elements")
     assert not turned.numbering.has_same_elements
+    assert "Node numbers and node sets stay valid" in turned.numbering.sentence
     moved = compared(mesh, replace(mesh, seam=mesh.seam * 1.001), tmp_path / "places")
     assert moved.numbering.has_same_nodes
     assert not moved.numbering.has_same_places

@@ -74,8 +74,11 @@ class Numbering:
         if self.has_same_places and self.has_same_elements:
             what = "node sets " + "; ".join(sets) if sets else "elements changed their regions"
             return f"Node and element numbers are the same, but {what}: look at loads that name these."
+        if self.has_same_places and not sets:
+            why = f" ({'; '.join(self.layout)})" if self.layout else ""
+            return f"Node numbers and node sets stay valid, but those of the elements do NOT: other elements{why}."
         remedy = (
-            f"the layout differs ({'; '.join(self.layout)})"
+            f"the layout differs ({'; '.join(self.layout)}); --keep OLD_DIR --map writes tables from old to new"
             if self.layout
             else "the layout is the same: a build with --keep OLD_DIR keeps the numbers"
         )
