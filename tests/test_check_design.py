@@ -5,11 +5,13 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import replace
 from functools import cache
+from pathlib import Path
 
 import blades
 import numpy as np
 import pytest
 
+import skinmesh
 from skinmesh.check.drops import check_drops
 from skinmesh.check.finding import FAIL, PASS, WARN, Finding
 from skinmesh.check.laminates import check_laminates, unpaired_plies
@@ -26,6 +28,8 @@ from skinmesh.mesh.build import build_mesh
 from skinmesh.mesh.measure import element_areas
 from skinmesh.mesh.shellmesh import ShellMesh
 
+EXAMPLES = Path(__file__).parents[1] / "examples"
+DESIGN = (check_notches, check_laminates, check_slenderness)
 # The meshes here are coarse to be quick, and ply ends go far to meet their rows.
 LIMITS = {**DEFAULT_LIMITS, "ply end move": Limit(0.05, np.inf, "a mesh for tests")}
 
@@ -71,7 +75,7 @@ def sound_mesh() -> ShellMesh:
 
 def findings(mesh: ShellMesh) -> list[Finding]:
     table = span_table(mesh)
-    checks = (check_plies, check_drops, check_notches, check_laminates, check_slenderness)
+    checks = (check_plies, check_drops, *DESIGN)
     found = [finding for check in checks for finding in check(mesh, table, limits=LIMITS)]
     return [*found, *check_web_ends(mesh, limits=LIMITS)]
 
@@ -261,3 +265,14 @@ def test_ply_ends_that_move_far_are_named(end: float, verdict: str) -> None:
     assert line.verdict == verdict
     assert f"by {end - 10.0:.3f} m at most, {(end - 10.0) / 20.0:.4f} of the blade's length" in line.measured
     assert verdict == PASS or line.where == "ply 'patch', layer 1, tip end at z = 10.150 m"
+
+
+@pytest.mark.parametrize(("example", "size"), [("marram-24", 0.4), ("tidal-6", 0.15)])
+def test_the_examples_are_free_of_such_mistakes(example: str, size: float) -> None:
+    blade = skinmesh.load(EXAMPLES / example / f"{example}.yaml")
+    mesh = build_mesh(replace(blade, mesh=replace(blade.mesh, size=constant(size), order=1)))
+    table = span_table(mesh)
+    found = [f for check in DESIGN for f in check(mesh, table, limits=DEFAULT_LIMITS)]
+    found += check_web_ends(mesh, limits=DEFAULT_LIMITS)
+    assert [f"{f.check}: {f.measured}" for f in found if f.verdict != PASS] == []
+    assert len(found) > 7
