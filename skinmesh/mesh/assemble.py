@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,19 +21,74 @@ Ints = NDArray[np.int64]
 OUTER_OFFSET = 0.5  # the nodes lie on the +e3 face of the laminate
 
 
-def assemble_mesh(
-    blade: BladeDefinition, skin: SkinMap, parts: tuple[PlaneMesh, ...], stacks: StackTable, report: BuildReport
-) -> ShellMesh:
-    """Tie the parts together, lay them on the surface, and give every element its region, stack and axes.
+@dataclass(frozen=True, eq=False)
+class Topology:
+    """Elements and the nodes that they share, before they are laid on a surface.
+
+    Attributes
+    ----------
+    sheet : (n,) int array
+    row, seam : (n,) float array
+        Parametric coordinates of the nodes, the ``n_corners`` corner nodes first.
+    n_corners : int
+    cells : (m, k) int array
+        Corners, then mid nodes, counter-clockwise about the outward normal.
+    strip : (m,) int array
+    band : (m,) int array
+        Row of elements along the span, from the root.
+    """
+
+    sheet: Ints
+    row: Floats
+    seam: Floats
+    n_corners: int
+    cells: Ints
+    strip: Ints
+    band: Ints
+
+
+def tie_parts(skin: SkinMap, parts: tuple[PlaneMesh, ...], *, hand: str) -> Topology:
+    """Tie parts of a mesh together and number their nodes and elements.
 
     Joints are tied by identity: nodes of base and webs that lie on a seam take that seam's own coordinates, and nodes
     with the same coordinates are one node. No distance is ever looked at.
 
     Parameters
     ----------
-    blade : BladeDefinition
     skin : SkinMap
     parts : tuple of PlaneMesh
+    hand : str
+
+    Returns
+    -------
+    Topology
+    """
+    level, seam, sheet, strip = (
+        np.concatenate([np.asarray(getattr(part, name)) for part in parts])
+        for name in ("level", "seam", "sheet", "strip")
+    )
+    band = (np.min(level, axis=1) // 2).astype(int)
+    order = np.lexsort((np.min(seam, axis=1), strip, band))
+    level, seam, sheet, strip, band = level[order], seam[order], sheet[order], strip[order], band[order]
+    n_sides = level.shape[1] // 2
+    node_sheet, seam = _tie(skin, level, seam, np.repeat(sheet[:, None], level.shape[1], axis=1))
+    keys, cells, n_corners = _number_nodes(level, node_sheet, seam, n_sides)
+    row = np.interp(keys[:, 0], np.arange(len(skin.levels.row)), skin.levels.row)
+    if hand == COUNTER_CLOCKWISE:
+        cells = np.hstack([cells[:, [0, *range(n_sides - 1, 0, -1)]], cells[:, : n_sides - 1 : -1]])
+    return Topology(keys[:, 1].astype(int), row, keys[:, 2], n_corners, cells, strip, band)
+
+
+def assemble_mesh(
+    blade: BladeDefinition, skin: SkinMap, topology: Topology, stacks: StackTable, report: BuildReport
+) -> ShellMesh:
+    """Lay elements on the surface and give each its region, stack and axes.
+
+    Parameters
+    ----------
+    blade : BladeDefinition
+    skin : SkinMap
+    topology : Topology
     stacks : StackTable
     report : BuildReport
 
@@ -40,21 +96,9 @@ def assemble_mesh(
     -------
     ShellMesh
     """
-    level, seam, sheet, strip = (
-        np.concatenate([np.asarray(getattr(part, name)) for part in parts])
-        for name in ("level", "seam", "sheet", "strip")
-    )
-    cell_row = (np.min(level, axis=1) // 2).astype(int)
-    order = np.lexsort((np.min(seam, axis=1), strip, cell_row))
-    level, seam, sheet, strip, cell_row = level[order], seam[order], sheet[order], strip[order], cell_row[order]
-    n_sides = level.shape[1] // 2
-    node_sheet, seam = _tie(skin, level, seam, np.repeat(sheet[:, None], level.shape[1], axis=1))
-    keys, cells, n_corners = _number_nodes(level, node_sheet, seam, n_sides)
-    row = np.interp(keys[:, 0], np.arange(len(skin.levels.row)), skin.levels.row)
-    points = skin.points(keys[:, 1].astype(int), row, keys[:, 2])
-    if blade.hand == COUNTER_CLOCKWISE:
-        cells = np.hstack([cells[:, [0, *range(n_sides - 1, 0, -1)]], cells[:, : n_sides - 1 : -1]])
-    connectivity = cells if blade.mesh.order == 2 else cells[:, :n_sides]
+    cells, strip = topology.cells, topology.strip
+    points = skin.points(topology.sheet, topology.row, topology.seam)
+    connectivity = cells if blade.mesh.order == 2 else cells[:, : cells.shape[1] // 2]
     e1, e2, e3 = element_axes(points, connectivity)
     regions, region_of_strip = _regions(skin, strip)
     is_web = np.array([s.kind == "web" for s in skin.strips])[strip]
@@ -65,21 +109,21 @@ def assemble_mesh(
         order=blade.mesh.order,
         surface=blade.mesh.surface,
         points=points,
-        n_corners=n_corners,
+        n_corners=topology.n_corners,
         cells=cells,
         region=region_of_strip[strip],
-        stack=stacks.index[strip, cell_row],
+        stack=stacks.index[strip, topology.band],
         offset=np.where(is_web, 0.0, OUTER_OFFSET),
         e1=e1,
         e2=e2,
         e3=e3,
-        sheet=keys[:, 1].astype(int),
-        row=row,
-        seam=keys[:, 2],
+        sheet=topology.sheet,
+        row=topology.row,
+        seam=topology.seam,
         regions=regions,
         stacks=stacks.stacks,
         materials=blade.materials,
-        node_sets=_node_sets(skin, row, keys),
+        node_sets=_node_sets(skin, topology),
         element_sets={},
         node_number=np.arange(1, len(points) + 1),
         element_number=np.arange(1, len(cells) + 1),
@@ -133,13 +177,14 @@ def _regions(skin: SkinMap, strip: Ints) -> tuple[tuple[Region, ...], Ints]:
     return regions, np.array([names.get(s.name, -1) for s in skin.strips])
 
 
-def _node_sets(skin: SkinMap, row: Floats, keys: Floats) -> Mapping[str, Ints]:
+def _node_sets(skin: SkinMap, topology: Topology) -> Mapping[str, Ints]:
+    row = topology.row
     sets = {"root": np.flatnonzero(row == 0.0), "tip": np.flatnonzero(row == len(skin.rows.z) - 1.0)}
     for i, z in enumerate(skin.surface.stations):
         sets[f"station {i:02d}"] = np.flatnonzero(row == float(skin.rows.index(float(z))))
-    on_skin = keys[:, 1] == SKIN
+    on_skin = topology.sheet == SKIN
     for web in skin.webs:
         in_span = on_skin & (row >= web.first_row) & (row <= web.last_row)
         for foot, seam in (("suction foot", web.suction_seam), ("pressure foot", web.pressure_seam)):
-            sets[f"{web.name} {foot}"] = np.flatnonzero(in_span & (keys[:, 2] == float(seam)))
+            sets[f"{web.name} {foot}"] = np.flatnonzero(in_span & (topology.seam == float(seam)))
     return sets

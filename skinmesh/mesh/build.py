@@ -10,14 +10,14 @@ from numpy.typing import NDArray
 
 from skinmesh.definition.blade import BladeDefinition, PlyRule
 from skinmesh.definition.names import resolve_cover
-from skinmesh.mesh.assemble import assemble_mesh
+from skinmesh.mesh.assemble import assemble_mesh, tie_parts
 from skinmesh.mesh.closing import closing_elements
 from skinmesh.mesh.inner_face import find_narrow_elements, find_thick_elements
 from skinmesh.mesh.keep import (
     check_kept_rule,
     keep_stack_numbers,
-    kept_elements,
     kept_layout,
+    kept_topology,
     with_kept_numbers,
 )
 from skinmesh.mesh.midsurface import move_to_middle
@@ -93,13 +93,15 @@ def build_mesh(blade: BladeDefinition, *, keep: ShellMesh | None = None, progres
         table=blade.stations,
     )
     tell("mesh", 0.3)
-    closing = closing_elements(skin, shape=blade.mesh.shape)
     if keep is None:
         regular = mesh_patches(cut_patches(skin), skin, shape=blade.mesh.shape)
+        tell("elements", 0.5)
+        closing = closing_elements(skin, shape=blade.mesh.shape)
+        topology = tie_parts(skin, (regular, closing), hand=blade.hand)
     else:
-        regular = kept_elements(keep, skin)
-    tell("elements", 0.5)
-    mesh = assemble_mesh(blade, skin, (regular, closing), stacks, report)
+        topology = kept_topology(keep, skin)
+        tell("elements", 0.5)
+    mesh = assemble_mesh(blade, skin, topology, stacks, report)
     if blade.mesh.surface == "mid":
         tell("mid surface", 0.65)
         mesh, limited = move_to_middle(mesh)

@@ -8,8 +8,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from skinmesh.definition.blade import BladeDefinition
+from skinmesh.definition.blade import SUCTION, BladeDefinition
 from skinmesh.errors import LayoutChanged, MeshError, Problem
+from skinmesh.mesh.assemble import Topology, tie_parts
+from skinmesh.mesh.closing import closing_elements
 from skinmesh.mesh.plane import PlaneMesh, with_middles
 from skinmesh.mesh.quality import aspect_ratio, corner_points, scaled_jacobian
 from skinmesh.mesh.shellmesh import MeshOrigin, ShellMesh
@@ -22,6 +24,7 @@ Ints = NDArray[np.int64]
 
 POOR_ASPECT, POOR_JACOBIAN = 10.0, 0.3  # common practice, no source
 WORSE = 1.2  # a number of poor elements that grew by more than this factor is worth a warning
+_SAME_LINE = 1e-9  # in row coordinates
 STANDS_OFF = 5.0  # and so are edges that stand off by this many times what was meant; our choice, no source
 
 
@@ -99,7 +102,42 @@ def check_kept_rule(blade: BladeDefinition, old: ShellMesh) -> None:
         )
 
 
-def kept_elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:
+def kept_topology(old: ShellMesh, skin: SkinMap) -> Topology:
+    """Elements and nodes of an earlier mesh, for a new surface.
+
+    Parameters
+    ----------
+    old : ShellMesh
+    skin : SkinMap
+        With the divisions of the old mesh.
+
+    Returns
+    -------
+    Topology
+    """
+    if old.order == 1:  # files of a first-order mesh hold no mid nodes; those of the keyword deck are made anew
+        shape = "quad" if old.n_sides == 4 else "triangle"
+        return tie_parts(skin, (_elements(old, skin), closing_elements(skin, shape=shape)), hand=old.hand)
+    corners = old.cells[:, : old.n_sides]
+    lines = skin.levels.row[::2]
+    band = np.searchsorted(lines, old.row[corners].min(axis=1) + _SAME_LINE, side="right") - 1
+    strip = np.empty(len(corners), dtype=np.int64)
+    top = old.seam[corners].max(axis=1)
+    strips = {web.name: skin.web_strip(web) for web in skin.webs}
+    for i, region in enumerate(old.regions):
+        own = np.flatnonzero(old.region == i)
+        if region.kind == "web":
+            strip[own] = strips[region.name]
+        elif region.kind == "base":
+            strip[own] = skin.base_strip
+        else:
+            # where the edges are closed, the suction side's last nodes have the pressure side's seam, 0
+            wraps = (old.seam[corners[own]] == 0.0).any(axis=1) & (region.side == SUCTION)
+            strip[own] = np.where(wraps, skin.n_seams - 2, np.ceil(top[own] - 1e-9).astype(int) - 1)
+    return Topology(old.sheet, old.row, old.seam, old.n_corners, old.cells, strip, band)
+
+
+def _elements(old: ShellMesh, skin: SkinMap) -> PlaneMesh:
     """The elements of an earlier mesh in the lattice of the skin map, those of the closings left out.
 
     Parameters
@@ -172,11 +210,10 @@ def with_kept_numbers(mesh: ShellMesh, old: ShellMesh) -> ShellMesh:
     Raises
     ------
     MeshError
-        The connectivity came out differently, which no change of geometry can explain.
+        Connectivity or regions came out differently, which no change of geometry can explain.
     """
-    # files of a first-order mesh hold no mid nodes; those of the keyword deck follow from the corner nodes
-    if not np.array_equal(mesh.connectivity, old.connectivity):
-        raise MeshError("the rebuilt mesh has another connectivity than the one to keep")
+    if not (np.array_equal(mesh.connectivity, old.connectivity) and np.array_equal(mesh.region, old.region)):
+        raise MeshError("the rebuilt mesh has other elements or regions than the one to keep")
     n = old.n_nodes
     node_number = np.concatenate([old.node_number[:n], mesh.node_number[n:]])
     _, warnings = compare_quality(old, mesh)
