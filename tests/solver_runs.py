@@ -107,9 +107,9 @@ class SolverRun:
     log: str
     dat: str
 
-    def block(self, title: str) -> NDArray:
-        """The table under a title of the .dat file."""
-        after = self.dat.split(title, 1)[1].splitlines()[2:]
+    def block(self, title: str, which: int = 0) -> NDArray:
+        """The table under a title of the .dat file, counted from the first of that title."""
+        after = self.dat.split(title)[which + 1].splitlines()[2:]
         rows = []
         for line in after:
             if not line.strip():
@@ -128,9 +128,9 @@ class SolverRun:
         rows = [line.split() for line in table.splitlines()]
         return np.array([float(row[3]) for row in rows if len(row) == 5 and row[0].isdigit()])
 
-    def displacements(self, name: str) -> NDArray:
+    def displacements(self, name: str, step: int = 0) -> NDArray:
         """(n, 4) node number and displacement."""
-        return self.block(f"displacements (vx,vy,vz) for set {name}")
+        return self.block(f"displacements (vx,vy,vz) for set {name}", step)
 
 
 def run_solver(mesh: ShellMesh, folder: Path, *, step: str | None = None, drop_clamp: bool = False) -> SolverRun:
@@ -173,9 +173,9 @@ def ring_loads(mesh: ShellMesh, level: float, *, axial: float = 0.0, tangential:
     return "\n".join(lines) + "\n"
 
 
-def all_moves(run: SolverRun, mesh: ShellMesh) -> NDArray:
-    """(n, 3) displacement of every node, from a run that printed those of ALL once."""
-    table = run.displacements("ALL")
+def all_moves(run: SolverRun, mesh: ShellMesh, step: int = 0) -> NDArray:
+    """(n, 3) displacement of every node in one of the steps, of a run that printed those of ALL."""
+    table = run.displacements("ALL", step)
     by_number = np.argsort(mesh.node_number)
     moves = np.full((len(mesh.points), 3), np.nan)
     moves[by_number[np.searchsorted(mesh.node_number[by_number], table[:, 0].astype(int))]] = table[:, 1:]
