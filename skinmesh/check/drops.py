@@ -46,7 +46,7 @@ def check_drops(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
             drops,
             "layers",
             limits["layers ended at once"],
-            "{} where plies begin or end; {:.0f} layers at once at most; {} beyond the limit",
+            "{1:.0f} layers at once at most; {0} where plies begin or end, {2} beyond the limit",
         ),
         _line(
             mesh,
@@ -54,8 +54,8 @@ def check_drops(mesh: ShellMesh, table: SpanTable, *, limits: Mapping[str, Limit
             drops,
             "slope",
             limits["taper"],
-            "{} where plies begin or end; thickness changes by {:.3f} of the length of an element row at most; "
-            "{} beyond the limit",
+            "thickness changes by {1:.3f} of the length of an element row at most; {0} where plies begin or end, "
+            "{2} beyond the limit",
         ),
     ]
 
