@@ -168,3 +168,7 @@ def test_the_inputs_are_found_or_asked_for(tmp_path: Path) -> None:
     (changed,) = told(tmp_path / "inputs")
     assert changed.verdict == NOT_MADE
     assert "are not those of the build" in changed.measured
+    (folder / "pipe.csv").unlink()
+    (lost,) = told(tmp_path / "inputs")
+    assert lost.verdict == NOT_MADE
+    assert "pipe.yaml is found, but not every file that it names" in lost.measured

@@ -83,15 +83,17 @@ def find_blade(built: BuiltMesh, *, folders: Iterable[Path]) -> tuple[BladeDefin
     if not found:
         return None, f"{sources[0].file} is not found; name its folder with --inputs"
     wanted = {(source.file, source.sha256) for source in sources}
+    reason = "the input files that are found are not those of the build"
     for path in found:
         if _is_same(path, sources[0]):
             try:
                 blade = load_blade(path)
             except InputError:
+                reason = f"{sources[0].file} is found, but not every file that it names"
                 continue
             if {(source.file, source.sha256) for source in blade.sources} == wanted:
                 return blade, ""
-    return None, "the input files that are found are not those of the build"
+    return None, reason
 
 
 def _places(folders: Iterable[Path]) -> list[Path]:
