@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.interpolate import Akima1DInterpolator
 
 from skinmesh.check.spantable import element_rows
 from skinmesh.frozen import freeze_array
@@ -137,8 +138,14 @@ def largest_change(old_z: Floats, old: Floats, new_z: Floats, new: Floats) -> La
     """
     if not len(old_z) or not len(new_z):
         return LargestChange(0.0, 0.0, 0.0)
-    before = old if np.array_equal(old_z, new_z) else np.interp(new_z, old_z, old)
     shared = (new_z >= old_z[0]) & (new_z <= old_z[-1])
+    if np.array_equal(old_z, new_z):
+        before = old
+    elif len(old_z) < 3:
+        before = np.interp(new_z, old_z, old)
+    else:
+        # smooth, or the bend of a curve between two places of the old one would pass for a change
+        before = Akima1DInterpolator(old_z, old)(np.clip(new_z, old_z[0], old_z[-1]))
     if not shared.any():
         return LargestChange(float(new_z[0]), 0.0, float(new[0]))
     k = int(np.argmax(np.where(shared, np.abs(new - before), -1.0)))
