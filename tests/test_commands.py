@@ -112,7 +112,7 @@ def test_help_shows_every_command_and_the_exit_statuses(run) -> None:
         assert word in outcome.out
 
 
-@pytest.mark.parametrize("command", ["new", "build", "beam", "check", "trial", "schema"])
+@pytest.mark.parametrize("command", ["new", "build", "beam", "check", "trial", "diff", "schema"])
 def test_help_of_a_command_has_an_example_and_fits_80_columns(run, command: str) -> None:
     outcome = run(command, "--help")
     assert outcome.status == 0
