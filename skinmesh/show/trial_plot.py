@@ -10,6 +10,7 @@ from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
 from skinmesh.show.panel import CAUTION, HEIGHT, panel
 from skinmesh.trial.compare import StaticCase
+from skinmesh.trial.form import parting_by_form
 from skinmesh.trial.run import Trial
 
 _SOLVER, _THEORY = AXIS_COLOURS[:2]
@@ -61,6 +62,17 @@ def _line(page: Page, place: int, trial: Trial, case: StaticCase) -> None:
         markersize=6,
         label=f"solver, {case.difference:+.1%} at the tip",
     )
+    if trial.held is not None:
+        kept = case.line_solver - parting_by_form(case, trial.held.statics[place])
+        axes.plot(
+            z,
+            factor * kept[:, case.component],
+            "x",
+            color=INK,
+            markersize=5,
+            markeredgewidth=1.0,
+            label="without the sections' change of form",
+        )
     axes.legend(frameon=False, fontsize=10)
 
 
