@@ -8,10 +8,11 @@
 
 from skinmesh.definition.blade import BladeDefinition
 from skinmesh.definition.read import load_blade as load
-from skinmesh.errors import InputError, MeshError, MissingExtra, OutputError, Problem, SkinmeshError
+from skinmesh.errors import InputError, LayoutChanged, MeshError, MissingExtra, OutputError, Problem, SkinmeshError
 from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Layer, Stack
 from skinmesh.mesh.build import build_mesh as build
+from skinmesh.mesh.carry import MeshMap, map_meshes
 from skinmesh.mesh.shellmesh import Region, ShellMesh
 from skinmesh.version import __version__
 from skinmesh.write.files import WrittenFile, write
@@ -20,8 +21,10 @@ __all__ = [
     "BladeDefinition",
     "InputError",
     "Layer",
+    "LayoutChanged",
     "Material",
     "MeshError",
+    "MeshMap",
     "MissingExtra",
     "OutputError",
     "Problem",
@@ -33,5 +36,6 @@ __all__ = [
     "__version__",
     "build",
     "load",
+    "map_meshes",
     "write",
 ]
