@@ -416,17 +416,59 @@ def test_paper_shows_both_sides_and_the_skin_in_light_colours(example: Path, ope
     assert picture(driver) == before
 
 
+def test_a_browser_without_webgl_shows_still_pictures_and_all_the_rest(tmp_path: Path, browser: Browser) -> None:
+    mesh = skinmesh.build(demonstration())
+    skinmesh.write(mesh, tmp_path, formats=["vtu"])
+    (tmp_path / f"{mesh.stem}.checks.json").write_text('{"findings": []}', encoding="utf-8")
+    page = write_page(tmp_path)
+    deaf = (
+        "const was = HTMLCanvasElement.prototype.getContext;"
+        "HTMLCanvasElement.prototype.getContext = function (kind, ...options)"
+        " { return kind.startsWith('webgl') ? null : was.call(this, kind, ...options); }"
+    )
+    script = browser.execute_cdp_cmd("Page.addScriptToEvaluateOnNewDocument", {"source": deaf})["identifier"]
+    try:
+        browser.get(page.as_uri())
+        end = time.monotonic() + 60
+        while not browser.execute_script("return document.documentElement.dataset.ready ?? null"):
+            assert time.monotonic() < end
+            time.sleep(0.02)
+        assert "WebGL" in browser.execute_script("return trouble.textContent")
+        # Every part in its own colour, which no other side of the blade hides: suction, pressure, developed skin.
+        missing = browser.execute_script(
+            "return [...document.querySelectorAll('#stills canvas')].map((c, k) => {"
+            "  const data = c.getContext('2d').getImageData(0, 0, c.width, c.height).data;"
+            "  const seen = new Set(new Uint32Array(data.buffer));"
+            "  const bytes = (hex) => [1, 3, 5].map((i) => parseInt(hex.slice(i, i + 2), 16));"
+            "  const word = ([r, g, b]) => (0xff000000 | (b << 16) | (g << 8) | r) >>> 0;"
+            "  return skinmeshPage.words.regions.filter((r) => ['cap', 'panel', 'web'].includes(r.kind)"
+            "    && [[1], [-1], [1, -1, 0]][k].includes(r.side) && !seen.has(word(bytes(r.colour)))).length; })"
+        )
+        assert missing == [0, 0, 0]
+        browser.execute_script(
+            "document.getElementById('find-number').value = 7; document.getElementById('find').requestSubmit()"
+        )
+        assert browser.execute_script("return document.querySelector('#picked dd').textContent") == "7"
+        assert browser.execute_script("return document.querySelectorAll('#cut-view path.ply').length") > 0
+    finally:
+        browser.execute_cdp_cmd("Page.removeScriptToEvaluateOnNewDocument", {"identifier": script})
+
+
 @pytest.mark.slow
 def test_a_large_blade_is_small_enough_and_soon_on_the_screen(tmp_path: Path, open_page: OpenPage) -> None:
     blade = skinmesh.load(EXAMPLES / "marram-24" / "marram-24.yaml")
     mesh = skinmesh.build(replace(blade, mesh=replace(blade.mesh, size=constant(0.03))))
     assert len(mesh.cells) > 195_000
     skinmesh.write(mesh, tmp_path, formats=["vtu"])
+    # Checks of so large a mesh take long and are no part of this test.
+    (tmp_path / "marram-24.checks.json").write_text('{"findings": []}', encoding="utf-8")
     path = write_page(tmp_path)
     assert path.stat().st_size < 15e6
-    driver = open_page(path)
-    picture(driver)  # waits for the last pixel, so that no frame is still on its way
-    drawn = float(driver.execute_script("return document.documentElement.dataset.drawn"))
-    print(f"{len(mesh.cells)} elements, {path.stat().st_size / 1e6:.1f} MB, drawn after {drawn / 1e3:.2f} s")
-    # 3 s on a quiet machine; others may be at work on this one.
-    assert drawn < 6000
+    seconds = []
+    for _ in range(3):
+        driver = open_page(path)
+        picture(driver)  # waits for the last pixel, so that no frame is still on its way
+        seconds.append(float(driver.execute_script("return document.documentElement.dataset.drawn")) / 1e3)
+    print(f"{len(mesh.cells)} elements, {path.stat().st_size / 1e6:.1f} MB, drawn after {seconds} s")
+    # The best of three, since others may be at work on this machine.
+    assert min(seconds) < 3.0

@@ -19,7 +19,7 @@ LICENCE = "three.LICENSE.txt"
 SCRIPTS = tuple(
     f"{part}.js"
     for part in (
-        *("data", "paint", "places", "arrows", "camera", "overlay", "viewer"),
+        *("data", "paint", "places", "arrows", "camera", "overlay", "viewer", "plain"),
         *("picked", "cut", "cutview", "charts", "tables", "main"),
     )
 )

@@ -86,6 +86,7 @@ function makeCut(mesh, pick) {
       if (inside.reduce((sum, wall) => sum + wall.length, 0) < 34 * pixel) continue;
       const middle = inside.sort((a, b) => a.ends[0].y + a.ends[0].x - b.ends[0].y - b.ends[0].x)[inside.length >> 1];
       const isWeb = words.regions[region].kind === "web";
+      if (isWeb && svg.clientWidth < 500) continue; // no room between walls; the table beside has its colour
       const [dy, dx] = isWeb ? [-1, 0] : middle.normal;
       const away = 12 * pixel + state.factor * (0.5 - mesh.offset[middle.element]) * thicknessOf(middle.stack);
       const y = (middle.ends[0].y + middle.ends[1].y) / 2 + dy * away, x = (middle.ends[0].x + middle.ends[1].x) / 2 + dx * away;

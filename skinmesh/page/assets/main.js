@@ -53,13 +53,8 @@ function showPicking(viewer, mesh) {
     viewer.render();
   };
   const goTo = (number) => {
-    const e = mesh.number.indexOf(number);
-    if (e < 0) {
-      byId("picked").replaceChildren(make("p", {}, `There is no element ${number}.`));
-      return;
-    }
-    pick(e);
-    viewer.goTo(e);
+    const e = pickNumber(mesh, number, pick);
+    if (e >= 0) viewer.goTo(e);
   };
   let down = null;
   canvas.addEventListener("pointerdown", (event) => { down = [event.clientX, event.clientY]; });
@@ -99,6 +94,28 @@ function showOnPaper(viewer) {
   window.addEventListener("afterprint", () => byId("stills").replaceChildren());
 }
 
+// What remains without WebGL: still pictures, and elements by number.
+function showPlainly(mesh) {
+  document.body.classList.add("plain");
+  byId("stills").append(...plainPictures(mesh, 1000));
+  byId("legend").replaceChildren(paintOf(mesh, "region", 0).legend());
+  byId("picked").firstElementChild.textContent = "Type the number of an element, or click a wall of the cut.";
+  const pick = (e) => showPicked(mesh, e);
+  const goTo = (number) => pickNumber(mesh, number, pick);
+  byId("find").addEventListener("submit", (event) => {
+    event.preventDefault();
+    goTo(Number.parseInt(byId("find-number").value, 10));
+  });
+  return { pick, goTo };
+}
+
+function pickNumber(mesh, number, pick) {
+  const e = mesh.number.indexOf(number);
+  if (e >= 0) pick(e);
+  else byId("picked").replaceChildren(make("p", {}, `There is no element ${number}.`));
+  return e;
+}
+
 async function start() {
   showHead();
   const mesh = await readMesh();
@@ -106,10 +123,11 @@ async function start() {
   try {
     viewer = makeViewer(mesh);
   } catch (error) {
-    trouble(`This browser cannot draw in three dimensions (WebGL): ${error.message}`);
+    trouble(`This browser cannot draw in three dimensions (WebGL); the blade stands here in still pictures. It says: ${error.message}`);
   }
-  let picking = { pick: (e) => showPicked(mesh, e), goTo: () => {} };
-  if (viewer) {
+  let picking;
+  if (!viewer) picking = showPlainly(mesh);
+  else {
     showControls(viewer, mesh);
     picking = showPicking(viewer, mesh);
     showOnPaper(viewer);
