@@ -19,7 +19,8 @@ function plainPictures(mesh, width) {
     const order = Array.from({ length: size }, (_, e) => e).filter((e) => isFlat || from * mesh.e3[3 * e] > 0);
     order.sort((e, f) => (isFlat ? mesh.region[e] - mesh.region[f] : near[e] - near[f]));
     const picture = make("canvas", { width: 2 * width, height: 2 * height });
-    const pen = picture.getContext("2d");
+    // Where there is no WebGL there is no graphics card either: drawn in memory at once.
+    const pen = picture.getContext("2d", { willReadFrequently: true });
     pen.scale(2, 2);
     pen.fillStyle = "#ffffff";
     pen.fillRect(0, 0, width, height);
