@@ -183,6 +183,7 @@ def test_every_shell_and_python_block_is_run_by_a_test() -> None:
         two_commands(),
         *[text for text in SHELL if SOLVER in text or re.match("skinmesh (check|beam|trial) ", text)],
         *[text for text in SHELL if text.startswith(CHANGE)],
+        *[text for text in SHELL if "skinmesh sweep " in text],  # by tests/test_sweep_command.py
     ]
     assert sorted(run) == sorted(SHELL)
 

@@ -6,10 +6,10 @@ import csv
 import os
 import re
 import signal
+import socket
 import subprocess
 import sys
 import time
-from collections.abc import Iterator
 from pathlib import Path
 
 import psutil
@@ -20,6 +20,7 @@ from sweep_files import CASES, POISONED, SWEEP, write_sweep
 from skinmesh.commands.main import cli
 from skinmesh.errors import InputError
 from skinmesh.sweep import crew
+from skinmesh.sweep.read import load_sweep
 
 COMMAND = (sys.executable, "-m", "skinmesh", "sweep", "twelve.yaml")
 QUIET = {**os.environ, "PYTHONWARNINGS": "ignore"}  # of the libraries of other processes; pytest's own stay errors
@@ -37,11 +38,11 @@ def without_times(rows: Rows) -> Rows:
 
 def sweep(folder: Path, *more: str) -> subprocess.CompletedProcess[str]:
     return subprocess.run(
-        [*COMMAND, *more], cwd=folder, env=QUIET, capture_output=True, text=True, timeout=120, check=False
+        [*COMMAND, *more], cwd=folder, env=QUIET, capture_output=True, text=True, timeout=600, check=False
     )
 
 
-def until(holds: object, *, seconds: float = 60.0) -> None:
+def until(holds: object, *, seconds: float = 300.0) -> None:
     assert callable(holds)
     end = time.monotonic() + seconds
     while not holds():
@@ -125,41 +126,53 @@ def test_a_sweep_that_is_done_needs_no_worker_and_a_changed_one_only_what_change
     assert f"{12 - POISONED + 1} were done before, 0 built now" in fewer.output
 
 
-@pytest.fixture
-def cluster(tmp_path: Path) -> Iterator[str]:
-    """A scheduler and two workers started by hand on the loopback address, in a folder of their own."""
-    home = tmp_path / "cluster"
-    home.mkdir()
-    note = home / "scheduler.json"
-    dask = (sys.executable, "-m", "distributed.cli.dask_scheduler")
-    commands = [[*dask, "--host", "127.0.0.1", "--port", "0", "--no-dashboard", "--scheduler-file", str(note)]]
-    worker = [sys.executable, "-m", "distributed.cli.dask_worker", "--scheduler-file", str(note), "--no-dashboard"]
-    commands += [[*worker, "--nthreads", "1", "--no-nanny", "--host", "127.0.0.1"]] * 2
-    running = [
-        subprocess.Popen(line, cwd=home, env=QUIET, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
-        for line in commands
-    ]
-    try:
-        until(note.exists)
-        yield re.search(r"tcp://127\.0\.0\.1:\d+", note.read_text())[0]
-    finally:
-        for process in running:
-            process.kill()
-        for process in running:
-            process.wait()
+README = (Path(__file__).parents[1] / "README.md").read_text(encoding="utf-8")
+EXAMPLE = "examples/sweeps/chord-and-cap.yaml"
 
 
-def test_a_cluster_that_runs_already_gives_the_same_rows(
-    cluster: str, resumed: tuple[Path, dict[str, bytes], str], tmp_path: Path
+def blocks_with(text: str) -> list[str]:
+    return [block for block in re.findall(r"^```\w+\n(.*?)^```", README, re.MULTILINE | re.DOTALL) if text in block]
+
+
+def test_the_page_shows_the_example_and_the_example_is_a_sweep_of_64() -> None:
+    path = Path(__file__).parents[1] / EXAMPLE
+    (shown,) = blocks_with("changes:")
+    wanted = [re.sub(r"\s+#.*", "", line) for line in path.read_text(encoding="utf-8").splitlines()]
+    assert shown.splitlines() == [line for line in wanted if line and line[0] != "#"]
+    plan = load_sweep(path)
+    assert len({(v.values["outer chord"], v.values["cap layers"]) for v in plan.variants}) == 64
+    assert blocks_with("skinmesh sweep ")[0] == f"skinmesh sweep {EXAMPLE}\n"
+
+
+def test_the_lines_of_the_page_start_a_cluster_that_gives_the_same_rows(
+    resumed: tuple[Path, dict[str, bytes], str], tmp_path: Path
 ) -> None:
+    (block,) = blocks_with("dask scheduler")
     cases = CASES.splitlines()
-    path = write_sweep(tmp_path, cases="\n".join([cases[0], *cases[POISONED - 1 : POISONED + 2]]))
-    arguments = ["sweep", str(path), "-o", str(tmp_path / "out"), "--scheduler", cluster, "--no-picture"]
-    done = CliRunner().invoke(cli, arguments, standalone_mode=False)
-    assert done.return_value == 1, done.exception
-    assert "0 were done before, 3 built now" in done.output
+    write_sweep(tmp_path, cases="\n".join([cases[0], *cases[POISONED - 1 : POISONED + 2]]))
+    with socket.socket() as free:
+        free.bind(("127.0.0.1", 0))
+        port = free.getsockname()[1]
+    assert block.count("8786") == 3
+    lines = block.replace("8786", str(port)).replace(EXAMPLE, "twelve.yaml --no-picture")
+    path = f"{Path(sys.executable).parent}{os.pathsep}{os.environ['PATH']}"
+    with (tmp_path / "said.txt").open("w") as said:
+        running = subprocess.Popen(
+            ["bash", "-c", lines],
+            cwd=tmp_path,
+            env={**QUIET, "PATH": path},
+            stdout=said,
+            stderr=subprocess.DEVNULL,
+            start_new_session=True,
+        )
+        try:
+            status = running.wait(timeout=600)
+        finally:
+            os.killpg(running.pid, signal.SIGKILL)
+    assert status == 1
+    assert "0 were done before, 3 built now" in (tmp_path / "said.txt").read_text()
     here = without_times(rows_of(resumed[0] / "twelve-sweep" / "twelve.csv"))[POISONED - 2 : POISONED + 1]
-    rows = without_times(rows_of(tmp_path / "out" / "twelve.csv"))
+    rows = without_times(rows_of(tmp_path / "twelve-sweep" / "twelve.csv"))
     assert [row | {"variant": ""} for row in rows] == [row | {"variant": ""} for row in here]
 
 

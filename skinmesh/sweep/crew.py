@@ -14,7 +14,7 @@ from skinmesh.errors import InputError, MissingExtra, OutputError, Problem
 from skinmesh.sweep.variant import FAILED, Outcome
 from skinmesh.version import __version__
 
-PATIENCE = 20
+PATIENCE = 30
 """Seconds to wait for a scheduler to answer, and for its first worker."""
 AHEAD = 2
 """Variants a worker is given beforehand, so that it never waits."""
