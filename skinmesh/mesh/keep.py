@@ -61,7 +61,8 @@ def kept_layout(old: ShellMesh) -> KeptLayout:
     rows = np.unique(old.row[is_corner & (old.sheet == SKIN) & (old.seam == 0.0)])
     root = old.seam[is_corner & (old.sheet == SKIN) & (old.row == 0.0)]
     on_base = is_corner & (old.sheet == SKIN) & (old.seam > n_seams - 1.0)
-    at_rows = on_base & np.isin(old.row, rows)
+    base = np.flatnonzero(on_base)
+    base = base[np.isin(old.row[base], rows)]
     webs = tuple(region.name for region in old.regions if region.kind == "web")
     in_base = np.array([region.kind == "base" for region in old.regions])[old.region]
     base_rows = old.row[old.cells[in_base, : old.n_sides]]
@@ -71,7 +72,7 @@ def kept_layout(old: ShellMesh) -> KeptLayout:
         webs=webs,
         n_levels=np.bincount(np.ceil(rows[1:]).astype(int) - 1, minlength=n_rows - 1),
         n_gaps=np.bincount(np.floor(np.unique(root)).astype(int), minlength=n_seams)[: n_seams - 1],
-        n_base=1 + len(np.unique(old.seam[at_rows])),
+        n_base=1 + len(np.unique(old.seam[base])),
         n_heights=tuple(
             1 + len(np.unique(old.seam[is_corner & (old.sheet == sheet)])) for sheet in range(1, len(webs) + 1)
         ),
@@ -118,22 +119,17 @@ def kept_topology(old: ShellMesh, skin: SkinMap) -> Topology:
     if old.order == 1:  # files of a first-order mesh hold no mid nodes; those of the keyword deck are made anew
         shape = "quad" if old.n_sides == 4 else "triangle"
         return tie_parts(skin, (_elements(old, skin), closing_elements(skin, shape=shape)), hand=old.hand)
-    corners = old.cells[:, : old.n_sides]
-    lines = skin.levels.row[::2]
-    band = np.searchsorted(lines, old.row[corners].min(axis=1) + _SAME_LINE, side="right") - 1
-    strip = np.empty(len(corners), dtype=np.int64)
-    top = old.seam[corners].max(axis=1)
-    strips = {web.name: skin.web_strip(web) for web in skin.webs}
-    for i, region in enumerate(old.regions):
-        own = np.flatnonzero(old.region == i)
-        if region.kind == "web":
-            strip[own] = strips[region.name]
-        elif region.kind == "base":
-            strip[own] = skin.base_strip
-        else:
-            # where the edges are closed, the suction side's last nodes have the pressure side's seam, 0
-            wraps = (old.seam[corners[own]] == 0.0).any(axis=1) & (region.side == SUCTION)
-            strip[own] = np.where(wraps, skin.n_seams - 2, np.ceil(top[own] - 1e-9).astype(int) - 1)
+    corners = old.cells[:, : old.n_sides].T  # whole arrays at a time: reducing rows of four is slow
+    seam = old.seam[corners]
+    lowest = np.minimum.reduce(old.row[corners])
+    band = np.searchsorted(skin.levels.row[::2], lowest + _SAME_LINE, side="right") - 1
+    # where the edges are closed, the suction side's last nodes have the pressure side's seam, 0
+    wraps = np.array([region.side == SUCTION for region in old.regions])[old.region] & (np.minimum.reduce(seam) == 0.0)
+    strip = np.ceil(np.maximum.reduce(seam) - _SAME_LINE).astype(np.int64) - 1
+    strip = np.where(wraps, skin.n_seams - 2, strip)
+    webs = {web.name: skin.web_strip(web) for web in skin.webs}
+    own = [skin.base_strip if r.kind == "base" else webs.get(r.name, -1) for r in old.regions]
+    strip = np.where(np.array(own)[old.region] >= 0, np.array(own)[old.region], strip)
     return Topology(old.sheet, old.row, old.seam, old.n_corners, old.cells, strip, band)
 
 
