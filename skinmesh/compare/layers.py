@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from itertools import groupby
 
 from skinmesh.laminate.stack import Layer
+from skinmesh.wording import counted
 
 LAYERS, THICKNESS, ANGLE, MATERIAL, ORDER = "layers", "thickness", "angle", "material", "order"
 
@@ -119,9 +120,9 @@ def _words(changes: Sequence[LayerChange]) -> str:
 
 def _layer_words(pairs: Sequence[tuple[int, int]]) -> str:
     if len(pairs) == 1 and all(pairs[0]):
-        return f"{pairs[0][0]} to {_counted(pairs[0][1])}"
+        return f"{pairs[0][0]} to {counted(pairs[0][1], 'layer')}"
     sizes = sorted({abs(after - before) for before, after in pairs})
-    amount = _counted(sizes[0]) if len(sizes) == 1 else f"{sizes[0]} to {_counted(sizes[-1])}"
+    amount = counted(sizes[0], "layer") if len(sizes) == 1 else f"{sizes[0]} to {counted(sizes[-1], 'layer')}"
     if not any(before for before, _ in pairs):
         return f"new here, {amount}"
     if not any(after for _, after in pairs):
@@ -131,7 +132,3 @@ def _layer_words(pairs: Sequence[tuple[int, int]]) -> str:
     if all(after < before for before, after in pairs):
         return f"{amount} fewer"
     return f"{amount} more or fewer"
-
-
-def _counted(n: int) -> str:
-    return f"{n} layer{'s' if n != 1 else ''}"
