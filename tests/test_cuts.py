@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 from pathlib import Path
 
@@ -15,7 +16,7 @@ import skinmesh
 from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.show.cuts import draw_cuts
 from skinmesh.show.developed import draw_developed
-from skinmesh.show.page import round_ticks
+from skinmesh.show.page import Page, round_ticks
 from skinmesh.show.palette import part_colours, part_name, rgb
 from skinmesh.show.section import Layers, Section, layers_of, outer_faces, section_at
 
@@ -125,3 +126,12 @@ def test_ticks_are_few_and_inside(most: int) -> None:
         ticks = round_ticks(low, high, most=most)
         assert len(ticks) <= most + 1
         assert np.all((ticks >= low - 1e-9) & (ticks <= high + 1e-9))
+
+
+def test_long_words_lose_their_middle_and_short_ones_nothing() -> None:
+    page = Page(100)
+    long = page.text(0, 50, "outer primary load-carrying main cap fore edge", most=150)
+    assert page.width_of(long) <= 150
+    assert re.fullmatch(r"outer.*….*edge", long.get_text())
+    assert page.text(0, 50, "main cap", most=150).get_text() == "main cap"
+    assert page.text(0, 50, "W" * 9, most=1).get_text() == "W…W"

@@ -79,7 +79,7 @@ def _format_names(_ctx: click.Context, _parameter: click.Parameter, value: str) 
     " carry the old nodes and elements to the new ones.",
 )
 @click.option("--watch", "is_watched", is_flag=True, help="Build again whenever an input file is saved, until Ctrl-C.")
-@click.option("--pictures", is_flag=True, help="Also draw regions, stacks, thickness and e1 (PNG).")
+@click.option("--pictures", is_flag=True, help="Also draw regions, stacks, thickness, e1, cuts, developed skin (PNG).")
 @click.option("--timings", is_flag=True, help="Also print time and peak memory of each stage.")
 def build(
     blade_file: Path,

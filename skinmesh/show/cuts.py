@@ -102,7 +102,7 @@ def _cut(mesh: ShellMesh, z: float, name: str) -> _Cut:
 
 def _head(page: Page, mesh: ShellMesh, cuts: list[_Cut]) -> float:
     """Title and legends; y of the last line's middle."""
-    page.text(MARGIN, 38, mesh.title, size=24, weight="bold")
+    page.text(MARGIN, 38, mesh.title, size=24, weight="bold", most=WIDTH - 2 * MARGIN)
     edge = "left" if mesh.hand == CLOCKWISE else "right"
     words = (
         f"Cuts at constant z, seen from the root: leading edge on the {edge}, suction side above  ·  nodes on the "
@@ -251,13 +251,9 @@ def _numbers(page: Page, mesh: ShellMesh, cut: _Cut, *, left: float, top: float)
         y += _LINE
         here = element[region == k]
         page.box(left, y - 6, 12, 12, colour=colours[part_name(mesh.regions[k])])
-        page.text(left + 18, y, _shortened(mesh.regions[k].name, 24), size=13)
+        page.text(left + 18, y, mesh.regions[k].name, size=13, most=_NUMBERS - 115)
         page.text(right - 50, y, _range(mesh.thickness[here] * 1e3), size=13, ha="right")
         page.text(right, y, _range(mesh.n_plies[here].astype(float)), size=13, ha="right")
-
-
-def _shortened(name: str, most: int) -> str:
-    return name if len(name) <= most else f"{name[: most - 1]}…"
 
 
 def _range(values: Floats) -> str:

@@ -79,18 +79,19 @@ def draw_developed(mesh: ShellMesh, path: Path) -> None:
     tallest = max((sheet.high - sheet.low for sheet in sheets), default=1.0)
     stretch = max((k for k in STRETCHES if k * across * tallest <= _SIDE_HEIGHT), default=1)
     heights = [max(int(np.ceil((s.high - s.low) * across * stretch)), _LEAST_WEB) for s in sheets]
-    page = Page(_TOP + sum(heights) + _BETWEEN * len(sheets) + 40)
     paint = paint_regions(mesh)
+    # The legend needs as many lines as it needs: it is laid on another page first.
+    below = int(Page(2000).swatches(MARGIN, 108, paint.names)) - 108
+    page = Page(_TOP + below + sum(heights) + _BETWEEN * len(sheets) + 40)
     times = "to the same scale" if stretch == 1 else f"arcs drawn {stretch} times as long as lengths along z"
-    page.text(MARGIN, 38, mesh.title, size=24, weight="bold")
+    page.text(MARGIN, 38, mesh.title, size=24, weight="bold", most=WIDTH - 2 * MARGIN)
     page.text(MARGIN, 72, f"Developed skin seen from outside, webs laid flat  ·  {times}", colour=QUIET)
     page.swatches(MARGIN, 108, paint.names)
-    page.text(
-        MARGIN, 140, "Upright lines are rows, numbered ones stations; the other lines are seams.", size=15, colour=QUIET
-    )
-    top: float = _TOP
+    words = "Upright lines are rows, numbered ones stations; the other lines are seams."
+    page.text(MARGIN, 140 + below, words, size=15, colour=QUIET)
+    top: float = _TOP + below
     for sheet, height in zip(sheets, heights, strict=True):
-        page.text(MARGIN, top + 8, sheet.name, weight="bold")
+        page.text(MARGIN, top + 8, sheet.name, weight="bold", most=WIDTH - 2 * MARGIN)
         _draw(page, mesh, sheet, paint.colours, top=top + 44, height=height, across=across, up=across * stretch)
         top += height + _BETWEEN
     page.text(MARGIN, page.height - 20, CAUTION, size=14, colour=QUIET)
@@ -242,4 +243,5 @@ def _names(page: Page, sheet: _Sheet, *, left: float, top: float, bottom: float,
         label, line = sheet.lines[k]
         reach = left - (end - line[-1, 0]) * across
         page.stroke([(reach + 2, float(wanted[k])), (left + 8, float(wanted[k])), (left + 22, float(y))], colour=QUIET)
-        page.text(left + 26, float(y), label.removeprefix("suction ").removeprefix("pressure "), size=_NAME)
+        words = label.removeprefix("suction ").removeprefix("pressure ")
+        page.text(left + 26, float(y), words, size=_NAME, most=_RIGHT + MARGIN - 40)

@@ -59,10 +59,23 @@ class Page:
         self.figure: Any = Figure(figsize=(WIDTH / DPI, height / DPI), dpi=DPI, facecolor="white")
         FigureCanvasAgg(self.figure)
 
-    def text(self, x: float, y: float, words: str, *, size: float = 17, colour: str = INK, **style: Any) -> Any:
-        """Write words; y is the middle of the line, size is in pixels. Returns the text object."""
+    def text(
+        self,
+        x: float,
+        y: float,
+        words: str,
+        *,
+        size: float = 17,
+        colour: str = INK,
+        most: float | None = None,
+        **style: Any,
+    ) -> Any:
+        """Write words; y is the middle of the line, size is in pixels. Returns the text object.
+
+        Words longer than ``most`` pixels lose their middle.
+        """
         style = {"ha": "left", "va": "center", **style}
-        return self.figure.text(
+        label = self.figure.text(
             x / WIDTH,
             1.0 - y / self.height,
             words,
@@ -72,6 +85,11 @@ class Page:
             family="DejaVu Sans",
             **style,
         )
+        kept = len(words)
+        while most is not None and kept > 2 and (width := self.width_of(label)) > most:
+            kept = max(min(kept - 1, int(kept * most / width)), 2)
+            label.set_text(f"{words[: kept - kept // 2]}…{words[len(words) - kept // 2 :]}")
+        return label
 
     def width_of(self, text: Any) -> float:
         """Width of a text object in pixels."""

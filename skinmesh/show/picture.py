@@ -100,7 +100,7 @@ def picture(mesh: ShellMesh, path: Path, *, by: str = "region") -> None:
     heights = [int(np.ceil(frame.height * scale)) for frame in whole]
 
     page = Page(_BEFORE_VIEWS + sum(heights) + 2 * _BETWEEN_VIEWS + _AXIS + _LOWER + MARGIN // 2)
-    page.text(MARGIN, 38, mesh.title, size=24, weight="bold")
+    page.text(MARGIN, 38, mesh.title, size=24, weight="bold", most=WIDTH - 2 * MARGIN)
     page.text(MARGIN, 72, f"{paint.title}  ·  {_size_of(mesh)}", colour=QUIET)
     _legend(page, paint)
     top = _BEFORE_VIEWS
