@@ -187,3 +187,4 @@ def test_wrong_input_is_refused_before_any_work(tmp_path: Path, monkeypatch: pyt
     for address in ("nonsense://x", "tcp://127.0.0.1:9"):
         with pytest.raises(InputError, match="no scheduler answers there"):
             CliRunner().invoke(cli, [*arguments, "--scheduler", address], standalone_mode=False, catch_exceptions=False)
+        assert not (tmp_path / "out").exists()

@@ -136,7 +136,7 @@ def open_records(directory: Path) -> Iterator[Records]:
     OutputError
         The folder cannot be written, or another sweep is at work in it.
     """
-    folder = directory / RECORDS
+    folder, was_there = directory / RECORDS, directory.exists()
     try:
         folder.mkdir(parents=True, exist_ok=True)
         lock = (folder / LOCK).open("w", encoding="utf-8")
@@ -151,7 +151,20 @@ def open_records(directory: Path) -> Iterator[Records]:
                 raise OutputError(f"another sweep is at work in {directory}; wait for it or stop it") from error
         for unfinished in folder.glob(".*.json"):
             unfinished.unlink(missing_ok=True)
-        yield Records(directory)
+        try:
+            yield Records(directory)
+        finally:
+            _remove_if_unused(directory, is_ours=not was_there)
+
+
+def _remove_if_unused(directory: Path, *, is_ours: bool) -> None:
+    """Leave no folder behind where the work never began."""
+    folder = directory / RECORDS
+    if [path.name for path in folder.iterdir()] == [LOCK] and not any(p != folder for p in directory.iterdir()):
+        (folder / LOCK).unlink()
+        folder.rmdir()
+        if is_ours:
+            directory.rmdir()
 
 
 def _sync_folder(folder: Path) -> None:
