@@ -6,30 +6,24 @@ variables SKINMESH_PYNASTRAN and SKINMESH_NASTRAN95.
 
 from __future__ import annotations
 
-import json
 import os
-import re
-import subprocess
 from dataclasses import replace
 from math import pi, radians, sin
-from pathlib import Path
 
 import numpy as np
 import pytest
+from nastran95_runs import asked, needs_nastran95, strain_and_twist
 from sample_meshes import GLASS_UD, box_with_web, numbered_box, sandwich, tube
-from solver_runs import STEEL, ring_of, thin_tube_stiffness, twisted_tube
+from solver_runs import STEEL, thin_tube_stiffness, twisted_tube
 
 from skinmesh.laminate.stack import Layer
 from skinmesh.mesh.measure import element_areas
-from skinmesh.mesh.shellmesh import ShellMesh
 from skinmesh.write.formats.bdf import write_bdf
 
 pytestmark = pytest.mark.reader
 
 PYNASTRAN = os.environ.get("SKINMESH_PYNASTRAN", "")
-NASTRAN95 = os.environ.get("SKINMESH_NASTRAN95", "")
 needs_pynastran = pytest.mark.skipif(not PYNASTRAN, reason="SKINMESH_PYNASTRAN names no Python with pyNastran in it")
-needs_nastran95 = pytest.mark.skipif(not NASTRAN95, reason="SKINMESH_NASTRAN95 names no Python with nastran95 in it")
 
 READ = """
 import json, sys
@@ -56,24 +50,6 @@ print(json.dumps({
     "sets": {name: value[0] for name, value in case.items() if name.startswith("SET ")},
 }))
 """
-
-SOLVE = """
-import json, sys, nastran95
-result = nastran95.run(sys.argv[1])
-print(json.dumps({
-    "completed": result.completed,
-    "output": result.output,
-}))
-"""
-
-
-def asked(python: str, program: str, path: Path) -> dict:
-    """What a program in another environment prints about a file."""
-    done = subprocess.run(
-        [python, "-c", program, path.name], cwd=path.parent, capture_output=True, text=True, timeout=300
-    )
-    assert done.returncode == 0, done.stderr
-    return json.loads(done.stdout.splitlines()[-1])
 
 
 @needs_pynastran
@@ -130,45 +106,6 @@ def test_pynastran_takes_hostile_names_and_strange_numbers(tmp_path):
     flat_mass = 3.0 * (2.4 * mesh.stacks[0].areal_mass + 0.4 * mesh.stacks[1].areal_mass)
     assert found["mass"] == pytest.approx(flat_mass, rel=1e-9)
     assert found["e1"] == pytest.approx(mesh.e1[by_number], abs=1e-4)
-
-
-def solved_by_nastran95(mesh: ShellMesh, folder: Path, forces: list[str]) -> dict[int, list[float]]:
-    """Displacements under nodal forces. Only the executive and case control are replaced: this solver's are its own."""
-    folder.mkdir(exist_ok=True)
-    path = folder / "deck.bdf"
-    write_bdf(mesh, path)
-    bulk = path.read_text().split("BEGIN BULK\n")[1]
-    kept = [line for line in bulk.splitlines() if not line.startswith(("PARAM", "GRAV", "$", "ENDDATA"))]
-    head = "ID SKIN,MESH\nAPP DISP\nSOL 1,0\nTIME 10\nCEND\nTITLE = TUBE\nSPC = 1\nLOAD = 2\nDISP = ALL\nBEGIN BULK\n"
-    path.write_text(head + "\n".join([*kept, "PARAM   AUTOSPC 1", *forces, "ENDDATA"]) + "\n")
-    found = asked(NASTRAN95, SOLVE, path)
-    assert found["completed"], found["output"][-3000:]
-    assert "FATAL" not in found["output"]
-    rows = re.findall(r"^ +(\d+) +G ((?: +[-+.\dE]+){6})", found["output"], re.MULTILINE)
-    assert len(rows) == mesh.n_nodes
-    return {int(number): [float(field) for field in fields.split()] for number, fields in rows}
-
-
-def strain_and_twist(mesh: ShellMesh, folder: Path, *, axial: float, tangential: float) -> tuple[float, float]:
-    """Axial strain and rate of twist between a third and two thirds of the length, from the nodes' own places."""
-    length = mesh.points[:, 2].max()
-    tip = ring_of(mesh, length)[0]
-    forces = []
-    for node in tip:
-        angle = np.arctan2(mesh.points[node, 1], mesh.points[node, 0])
-        force = np.array([-np.sin(angle) * tangential, np.cos(angle) * tangential, axial]) / len(tip)
-        size = np.linalg.norm(force)
-        direction = "".join(f"{value:8.5f}" for value in force / size)
-        forces.append(f"FORCE   {2:8d}{mesh.node_number[node]:8d}{0:8d}{size:8.2f}{direction}")
-    moves = solved_by_nastran95(mesh, folder, forces)
-    means = []
-    for level in (length / 3, 2 * length / 3):
-        ring = ring_of(mesh, level)[0]
-        at = np.array([moves[int(mesh.node_number[node])] for node in ring])
-        x, y = mesh.points[ring, 0], mesh.points[ring, 1]
-        means.append((at[:, 2].mean(), np.mean((x * at[:, 1] - y * at[:, 0]) / (x * x + y * y))))
-    (low, low_turn), (high, high_turn) = means
-    return (high - low) / (length / 3), (high_turn - low_turn) / (length / 3)
 
 
 @needs_nastran95
