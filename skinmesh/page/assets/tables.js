@@ -15,7 +15,7 @@ const fromTo = ([low, high], digits = 6) => (low === high ? `${+low.toPrecision(
 function showPlies(choose) {
   const rows = words.ply_table.map((one) => [
     make("a", { class: "el", href: "#blade", onclick: () => choose(words.plies.indexOf(one.ply)) }, one.ply), one.materials.join(", "),
-    make("span", {}, ...one.angles.flatMap((a) => [swatch(`rgb(${toneOfAngle([a]).join(" ")})`), ` ${degrees(a)} `])), fromTo(one.thickness.map((t) => 1e3 * t)), fromTo(one.layers), one.regions.join(", "),
+    make("span", { class: "angles" }, ...one.angles.flatMap((a) => [swatch(`rgb(${toneOfAngle([a]).join(" ")})`), ` ${degrees(a)} `])), fromTo(one.thickness.map((t) => 1e3 * t)), fromTo(one.layers), one.regions.join(", "),
     fixed(one.z[0]), fixed(one.z[1]), significant(one.area), significant(one.mass),
   ]);
   if (words.hand === "counter-clockwise" && rows.length) {
