@@ -150,3 +150,8 @@ def test_begins_with_a_mistake_and_takes_the_numbers_of_an_old_folder(folder):
         assert_same_numbers(*(read_built_mesh(folder / place).mesh for place in ("old", "live")))
         watching.until("Watching")
         assert watching.stop(signal.SIGTERM) == 143
+
+
+def test_stages_of_one_build_are_not_told_of_many(folder, capsys):
+    assert run(["build", str(folder / "marram-24.yaml"), "--watch", "--timings"]) == 2
+    assert "leave out --watch" in capsys.readouterr().err

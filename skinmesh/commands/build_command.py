@@ -109,6 +109,8 @@ def build(
     start = perf_counter()
     if with_map and keep is None:
         raise click.UsageError("--map carries the nodes and elements of an earlier mesh: name its folder with --keep.")
+    if is_watched and timings:
+        raise click.UsageError("--timings tells the stages of one build; leave out --watch.")
     if pictures:
         require_pictures()
     old = None if keep is None else read_built_mesh(keep).mesh
