@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from skinmesh.mesh.lattice import BASE, SKIN, Lattice
 from skinmesh.mesh.shellmesh import ShellMesh
-from skinmesh.skin.kept import MatchedLines, match_lines
+from skinmesh.skin.kept import MatchedLines, match_lines, seam_names
 
 Floats = NDArray[np.float64]
 
@@ -42,7 +42,7 @@ class Crossing:
         is_same = _is_same_lattice(old, new)
         self.matched_rows = rows = match_lines(*_row_names(old.mesh, new.mesh, with_base=is_same))
         self.matched_seams = seams = match_lines(
-            *([_seam_names(label) for label in mesh.report.seams] for mesh in (old.mesh, new.mesh))
+            *([seam_names(label) for label in mesh.report.seams] for mesh in (old.mesh, new.mesh))
         )
         grids = old.skin_points(), new.skin_points()
         lines = old.charts[SKIN].rows, new.charts[SKIN].rows
@@ -194,11 +194,3 @@ def _same_stations(old: Floats, new: Floats) -> list[tuple[int, int]]:
         if len(same) > len(pairs):
             pairs = {int(i): int(j) for i, j in same}
     return sorted({**pairs, 0: 0, len(old) - 1: len(new) - 1}.items())
-
-
-def _seam_names(label: str) -> list[str]:
-    """'pressure cap edge + web foot' by its two names, each with its side."""
-    side, _, rest = label.partition(" ")
-    if side not in ("pressure", "suction"):
-        return [label]
-    return [f"{side} {part}" for part in rest.split(" + ")]

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from difflib import ndiff
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -60,7 +61,8 @@ class LayoutComparison:
         """Note the labels that went, came, joined, parted, or changed places."""
         if tuple(before) == tuple(now):
             return
-        reasons = [[part for label in labels for part in label.split(" + ")] for labels in (before, now)]
+        names = seam_names if kind == "seams" else partial(str.split, sep=" + ")
+        reasons = [[part for label in labels for part in names(label)] for labels in (before, now)]
         gone = [part for part in reasons[0] if part not in reasons[1]]
         new = [part for part in reasons[1] if part not in reasons[0]]
         if gone:
@@ -75,6 +77,18 @@ class LayoutComparison:
             return
         joined = [label for label in (*before, *now) if " + " in label and (label in before) != (label in now)]
         self.changes.append(f"{kind} joined or parted: {', '.join(joined)}")
+
+
+def seam_names(label: str) -> list[str]:
+    """The names of a seam, each with its side.
+
+    >>> seam_names("pressure main cap aft edge + aft web foot")
+    ['pressure main cap aft edge', 'pressure aft web foot']
+    """
+    side, _, rest = label.partition(" ")
+    if side not in ("pressure", "suction"):
+        return [label]
+    return [f"{side} {part}" for part in rest.split(" + ")]
 
 
 @dataclass(frozen=True)
