@@ -27,7 +27,7 @@ def test_helical_tube_extends_and_twists_as_theory_has_it(tmp_path, surface, han
         stations([0, 2, 4, 6], [2 * radius + thickness] * 4, ["ring"] * 4),
         {"ring": CircleProfile()},
         plies=[PlyRule("wall", GLASS, constant(thickness), constant(1), np.radians(angle), ("skin",))],
-        mesh=rule(0.15, surface=surface),
+        mesh=rule(0.3, surface=surface, chord_error=0.02),
         hand=hand,
     )
     mesh = build_mesh(definition)
