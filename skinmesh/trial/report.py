@@ -106,6 +106,11 @@ def remarks(trial: Trial) -> tuple[str, ...]:
     for k, (case, part) in enumerate(zip(cases, parts, strict=True)):
         if _is_notable(case):
             told.append(" ".join([_case_remark(case, trial.rings.z), *_form_remark(trial, k, case, part)]))
+    if told and trial.held is None:
+        told.append(
+            "How much of that is the sections' change of form, a second run with sections kept in form tells"
+            " (--hold-shape)."
+        )
     told += [*_distortion_remarks(trial)]
     shells = [f"{mode.solver:.3f} Hz" for mode in trial.modes if mode.kind == "shell"]
     if shells:
