@@ -20,6 +20,8 @@ rigid share is that of the mode's motion which rigid sections explain):
     core mm              0       1       3       6      12
     torsion mode %   -6.90   -3.38   -1.15   -0.28   +0.10
     rigid share     0.9890  0.9973  0.9996  0.9999  1.0000
+
+At the default mesh the core of 12 mm brings it from -11.53 % to -0.23 %, the rigid share from 0.9727 to 1.0000.
 """
 
 from __future__ import annotations
