@@ -1,6 +1,12 @@
-"""Words of sentences that count."""
+"""Sentences and words that many outputs share."""
 
 from __future__ import annotations
+
+CAUTION = (
+    "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes.",
+    "It certifies nothing.",
+)
+"""What every file, picture and page carries; the first sentence stands alone where there is room for one only."""
 
 
 def counted(n: int, one: str, many: str = "") -> str:

@@ -10,12 +10,12 @@ from numpy.typing import NDArray
 from skinmesh.beam.sections import SectionProperties
 from skinmesh.beam.table import BeamTable, beam_difference
 from skinmesh.beam.totals import BladeTotals
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 
 NOTES = (
-    "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes.",
-    "It certifies nothing.",
+    *CAUTION,
     "Blade axes: z along the pitch axis, x and y from it. theory: thin-wall laminate theory on the exact sections.",
     "mesh: sum over the mesh's own elements. difference: mesh over theory; of centres the distance over the chord.",
     "EI_small, EI_large: principal bending stiffnesses about the tension centre. structural_twist: direction in which",

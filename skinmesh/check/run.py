@@ -34,8 +34,8 @@ from skinmesh.check.spantable import span_table
 from skinmesh.check.thick import check_folding, check_radius
 from skinmesh.check.totals import check_build_warnings, check_files, check_mass
 from skinmesh.check.webs import check_web_ends
-from skinmesh.wording import counted
-from skinmesh.write.deck_text import CAUTION, number_lines, safe_names
+from skinmesh.wording import CAUTION, counted
+from skinmesh.write.deck_text import number_lines, safe_names
 from skinmesh.write.files import CHECK_SETS_FILE, CHECKS_FILE
 from skinmesh.write.placing import new_file
 

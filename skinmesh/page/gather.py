@@ -20,7 +20,7 @@ from skinmesh.show.develop import DevelopedMesh, develop
 from skinmesh.show.outline import border_edges
 from skinmesh.show.paint import round_levels
 from skinmesh.show.palette import AXIS_COLOURS, BARE, MATERIAL_TONES, part_colours, part_name, scale_colours
-from skinmesh.write.deck_text import CAUTION
+from skinmesh.wording import CAUTION
 
 TRIAL_FILE = "trial.json"
 _LARGEST_ASPECT = 100.0

@@ -12,7 +12,8 @@ from numpy.typing import NDArray
 from skinmesh.beam.table import BeamTable, beam_difference
 from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, QUIET
-from skinmesh.show.panel import CAUTION, HEIGHT, panel
+from skinmesh.show.panel import HEIGHT, panel
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 
@@ -70,7 +71,7 @@ def beam_plot(table: BeamTable, path: Path) -> None:
     for colour, (label, values) in zip(COLOURS, shares.items(), strict=True):
         axes.plot(table.z, values, color=colour, linewidth=1.2, label=label)
     axes.legend(frameon=False, fontsize=10)
-    page.text(MARGIN, HEIGHT - 25, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, HEIGHT - 25, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

@@ -14,8 +14,8 @@ from skinmesh.mesh.planform import planform
 from skinmesh.mesh.shellmesh import NO_STACK, ShellMesh
 from skinmesh.show.page import MARGIN, WIDTH, Page
 from skinmesh.show.palette import BARE, INK, MATERIAL_TONES, QUIET, part_colours, part_name, rgb
-from skinmesh.show.panel import CAUTION
 from skinmesh.show.section import Layers, Section, layers_of, outer_faces, section_at
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -72,7 +72,7 @@ def draw_cuts(mesh: ShellMesh, path: Path) -> None:
     for cut, height in zip(cuts, heights, strict=True):
         _draw(page, mesh, cut, top, height)
         top += height
-    page.text(MARGIN, page.height - 22, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, page.height - 22, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

@@ -16,8 +16,8 @@ from skinmesh.show.develop import DevelopedMesh, develop
 from skinmesh.show.page import MARGIN, WIDTH, Page, round_ticks
 from skinmesh.show.paint import paint_regions
 from skinmesh.show.palette import INK, QUIET
-from skinmesh.show.panel import CAUTION
 from skinmesh.show.render import Camera, Frame, render
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -94,7 +94,7 @@ def draw_developed(mesh: ShellMesh, path: Path) -> None:
         page.text(MARGIN, top + 8, sheet.name, weight="bold", most=WIDTH - 2 * MARGIN)
         _draw(page, mesh, sheet, paint.colours, top=top + 44, height=height, across=across, up=across * stretch)
         top += height + _BETWEEN
-    page.text(MARGIN, page.height - 20, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, page.height - 20, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

@@ -12,7 +12,8 @@ from skinmesh.compare.run import MeshDifference
 from skinmesh.compare.surface import BY_NUMBER, Move
 from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
-from skinmesh.show.panel import CAUTION, HEIGHT, panel
+from skinmesh.show.panel import HEIGHT, panel
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 
@@ -54,7 +55,7 @@ def diff_plot(difference: MeshDifference, path: Path) -> None:
         _pair(panel(page, place, title, z), *curves)
     _mass_change(panel(page, 4, "mass, new less old, kg/m", z), difference)
     _moves(panel(page, 5, "move, largest at each z, mm", z), difference)
-    page.text(MARGIN, HEIGHT - 25, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, HEIGHT - 25, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

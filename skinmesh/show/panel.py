@@ -9,8 +9,6 @@ from skinmesh.show.palette import INK
 
 HEIGHT, TOP, GAP_ACROSS, GAP_DOWN = 1180, 130, 110, 95
 COLUMNS, ROWS = 3, 2
-CAUTION = "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes."
-"""The short caution at the foot of every such page."""
 
 
 def panel(page: Page, place: int, title: str, span: tuple[float, float], *, is_log: bool = False) -> Any:

@@ -11,10 +11,11 @@ from numpy.typing import NDArray
 
 from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
-from skinmesh.show.panel import CAUTION, HEIGHT, panel
+from skinmesh.show.panel import HEIGHT, panel
 from skinmesh.sweep.metrics import TEXT
 from skinmesh.sweep.table import ResultTable
 from skinmesh.sweep.variant import OK
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 Row = Mapping[str, Any]
@@ -64,7 +65,7 @@ def sweep_plot(table: ResultTable, path: Path) -> None:
     for place, (title, column) in enumerate(PANELS):
         values = np.array([_value(row, column) for row in table.rows])
         draw(page, place, title, table.rows, swept, values)
-    page.text(MARGIN, HEIGHT - 25, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, HEIGHT - 25, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

@@ -8,10 +8,11 @@ import numpy as np
 
 from skinmesh.show.page import MARGIN, Page
 from skinmesh.show.palette import AXIS_COLOURS, INK, QUIET
-from skinmesh.show.panel import CAUTION, HEIGHT, panel
+from skinmesh.show.panel import HEIGHT, panel
 from skinmesh.trial.compare import StaticCase
 from skinmesh.trial.form import parting_by_form
 from skinmesh.trial.run import Trial
+from skinmesh.wording import CAUTION
 
 _SOLVER, _THEORY = AXIS_COLOURS[:2]
 _UNITS = {0: (1.0, "deflection along x, m"), 1: (1.0, "deflection along y, m"), 5: (180.0 / np.pi, "twist, °")}
@@ -45,7 +46,7 @@ def trial_plot(trial: Trial, path: Path) -> None:
         _line(page, place, trial, case)
     _frequencies(page, len(trial.statics), trial)
     _distortion(page, len(trial.statics) + 1, trial)
-    page.text(MARGIN, HEIGHT - 25, CAUTION, size=14, colour=QUIET)
+    page.text(MARGIN, HEIGHT - 25, CAUTION[0], size=14, colour=QUIET)
     page.save(path)
 
 

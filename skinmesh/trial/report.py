@@ -19,7 +19,7 @@ from skinmesh.trial.compare import ModeCase, StaticCase
 from skinmesh.trial.form import FormPart, form_parts, parting_by_form, place_of_parting
 from skinmesh.trial.run import Trial
 from skinmesh.version import __version__
-from skinmesh.write.deck_text import CAUTION
+from skinmesh.wording import CAUTION
 
 Floats = NDArray[np.float64]
 

@@ -15,10 +15,6 @@ from skinmesh.laminate.stack import Layer
 from skinmesh.mesh.shellmesh import ShellMesh
 
 LONGEST_NAME = 80
-CAUTION = (
-    "An aid only: to be verified by a qualified engineer under IEC 61400-5, DNV-ST-0376 and local codes.",
-    "It certifies nothing.",
-)
 _BLOCK = 50_000
 
 

@@ -20,7 +20,7 @@ from skinmesh.laminate.code import LaminateCodes, laminate_codes
 from skinmesh.laminate.material import Material
 from skinmesh.mesh.measure import mass_properties, solid_mass
 from skinmesh.mesh.shellmesh import MeshOrigin, ShellMesh
-from skinmesh.write.deck_text import CAUTION
+from skinmesh.wording import CAUTION
 
 STACK_COLUMNS = (
     "stack",

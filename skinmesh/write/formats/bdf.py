@@ -17,8 +17,8 @@ from skinmesh.laminate.material import Material
 from skinmesh.laminate.stack import Layer
 from skinmesh.mesh.inner_face import middle_height
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import CAUTION
 from skinmesh.write.deck_text import (
-    CAUTION,
     ascii_text,
     deck_layers,
     element_groups,

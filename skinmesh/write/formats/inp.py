@@ -13,8 +13,8 @@ from numpy.typing import NDArray
 from skinmesh.laminate.stack import Layer
 from skinmesh.mesh.inner_face import node_normals
 from skinmesh.mesh.shellmesh import ShellMesh
+from skinmesh.wording import CAUTION
 from skinmesh.write.deck_text import (
-    CAUTION,
     ascii_text,
     deck_layers,
     element_groups,
