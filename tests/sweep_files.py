@@ -39,13 +39,15 @@ blade: tiny.yaml
 changes:
   outer chord: {column: chord_m, factor: cases, span: [3, 4], ramp: 1.5}
   layers: {field: plies.cap.count, set: cases}
+  size: {field: mesh.size, set: cases}
 cases: twelve-cases.csv
 sections: [1, 3]
 checks: false
 """
-POISONED = 7
-CASES = "name, outer chord, layers\n" + "".join(
-    f"case {k}, {1 + 0.01 * k:g}, {-1 if k == POISONED else 2 + k}\n" for k in range(1, 13)
+POISONED, COARSER = 7, 12
+CASES = "name, outer chord, layers, size\n" + "".join(
+    f"case {k}, {1 + 0.01 * k:g}, {-1 if k == POISONED else 2 + k}, {0.3 if k == COARSER else ''}\n"
+    for k in range(1, 13)
 )
 
 

@@ -241,9 +241,9 @@ write: [vtx]
 
 
 def test_mistakes_in_cases_and_in_the_blade_are_told_beside_those_of_the_sweep(tmp_path: Path) -> None:
-    path = write_sweep(tmp_path, cases=CASES.replace("layers\n", "layer\n").replace("1.03", "1,03"))
+    path = write_sweep(tmp_path, cases=CASES.replace("layers, size", "layer, size").replace("1.03", "1,03"))
     told = problems(path)
-    assert "line 1, layer: no change 'layer'; known: outer chord, layers, name — did you mean 'layers'?" in told
+    assert "line 1, layer: no change 'layer'; known: outer chord, layers, size, name — did you mean 'layers'?" in told
     assert "line 1: the column 'layers' is missing" in told
     write_tiny_blade(tmp_path, ("count: 4", "count: -4"))
     path.write_text(SWEEP.replace("cases: twelve-cases.csv\n", "combine: grid\n"))
