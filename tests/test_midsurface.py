@@ -129,7 +129,7 @@ def test_tube_in_a_solver_on_both_surfaces(tmp_path, share):
         stations([0, 2, 4, 6], [2 * outer] * 4, ["ring"] * 4),
         {"ring": CircleProfile()},
         plies=[PlyRule("wall", STEEL, constant(thickness), constant(1), 0.0, ("skin",))],
-        mesh=rule(0.15),
+        mesh=rule(0.3, chord_error=0.01),
     )
     for surface, mesh in (("mid", on_mid(definition)), ("outer", build_mesh(definition))):
         arm = radius if surface == "mid" else outer
@@ -139,7 +139,7 @@ def test_tube_in_a_solver_on_both_surfaces(tmp_path, share):
         assert strain == pytest.approx(1e6 / (STEEL.E1 * area), rel=1e-3)
         ratio = (turn * STEEL.G12 * 2 * second / (1e6 * arm), curvature * STEEL.E1 * second / (1e6 * arm))
         if surface == "mid":
-            assert ratio == pytest.approx((1.0, 1.0), rel=1e-3)
+            assert ratio == pytest.approx((1.0, 1.0), rel=2e-4)
         else:
             # torque and moment arrive as radius / arm; the slope read over the outer coordinates does so again
             assert ratio == pytest.approx((radius / outer, (radius / outer) ** 2), rel=1e-3)
