@@ -72,9 +72,7 @@ def home(tmp_path_factory: pytest.TempPathFactory) -> tuple[ShellMesh, NDArray, 
     return mesh, *answers(mesh, np.eye(3), tmp_path_factory.mktemp("home"))
 
 
-@pytest.mark.parametrize(
-    ("twist", "hand"), [(37.0, "clockwise"), (0.0, "counter-clockwise"), (-110.0, "counter-clockwise")]
-)
+@pytest.mark.parametrize(("twist", "hand"), [(37.0, "clockwise"), (0.0, "counter-clockwise")])
 def test_a_moved_blade_answers_as_the_blade_at_home(tmp_path, home, twist, hand):
     mesh, moves, frequencies = home
     mirror = np.diag([1.0, 1.0 if hand == "clockwise" else -1.0, 1.0])
