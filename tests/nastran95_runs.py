@@ -54,7 +54,8 @@ def output_of(mesh: ShellMesh, folder: Path, *, case: str, cards: list[str]) -> 
 
 def solved_by_nastran95(mesh: ShellMesh, folder: Path, forces: list[str]) -> dict[int, list[float]]:
     """Displacements under nodal forces."""
-    case = "SOL 1,0\nTIME 10\nCEND\nTITLE = TUBE\nSPC = 1\nLOAD = 2\nDISP = ALL\n"
+    lines = "MAXLINES = 9999999\nECHO = NONE\n"  # or it stops at 20 000
+    case = f"SOL 1,0\nTIME 10\nCEND\n{lines}TITLE = TUBE\nSPC = 1\nLOAD = 2\nDISP = ALL\n"
     output = output_of(mesh, folder, case=case, cards=forces)
     rows = re.findall(r"^ +(\d+) +G ((?: +[-+.\dE]+){6})", output, re.MULTILINE)
     assert len(rows) == mesh.n_nodes
