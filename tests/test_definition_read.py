@@ -33,7 +33,9 @@ from skinmesh.definition.yamltree import read_document
 from skinmesh.errors import InputError
 from skinmesh.laminate.material import Material
 
-EXAMPLES = sorted((Path(__file__).parents[1] / "examples").glob("*/*.yaml"))
+EXAMPLES = [
+    path for path in sorted((Path(__file__).parents[1] / "examples").glob("*/*.yaml")) if path.parent.name != "sweeps"
+]
 
 
 @pytest.fixture
