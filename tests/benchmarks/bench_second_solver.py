@@ -1,8 +1,8 @@
 """Whole blades in two solvers under the same tip loads: ``pytest tests/benchmarks/bench_second_solver.py -s``.
 
-Not in the default run; about ten minutes on two cores. Both on the mid surface: CalculiX with layered S8R, NASTRAN-95
-with flat first-order CQUAD4 on the corners of the same elements. Each as a difference from Euler-Bernoulli theory, in
-per cent, NASTRAN-95 second:
+Not in the default run; about a quarter of an hour on two cores. Both on the mid surface: CalculiX with layered S8R,
+NASTRAN-95 with flat first-order CQUAD4 on the corners of the same elements. Each as a difference from Euler-Bernoulli
+theory, in per cent, NASTRAN-95 second:
 
                         flap-wise        edge-wise           torque
     Tidal 6            +7.7   +8.1      +4.1   +6.1      +1.9   +1.6
